@@ -1,0 +1,5 @@
+package surveyfile
+
+func (l *loader) check() {}
+
+func (l *loader) checkFields(f *fieldList) {}
