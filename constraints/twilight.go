@@ -1,0 +1,4 @@
+package constraints
+
+// sunTooHigh tells whether the Sun's centre breaks sun_altitude_max, rad.
+func sunTooHigh(s *Sight, limit float64) bool { return s.SunAltitude > limit }
