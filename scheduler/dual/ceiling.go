@@ -1,0 +1,66 @@
+package dual
+
+import (
+	"math"
+
+	"nightwright/scheduler/model"
+)
+
+// Ceiling evaluates the relaxation at the current prices in full: for every
+// lambda >= 0 (prices), mu >= 0 (count multipliers) and share multipliers,
+//
+//	L = sum over slots of capacity x price - what keep_free takes back
+//	    + sum over fields of the best its wants could earn + share slack
+//
+// is at least C of every legal plan. width is the start bins' width in
+// seconds. The result is rounded up by a relative 1e-9 and an absolute 1e-12,
+// far above the float64 error of sums of 1e6 terms below 1.
+func (a *Ascent) Ceiling(width float64) float64 {
+	a.oracle.SetBins(width, true)
+	a.oracle.Refresh()
+	a.peaks.SetPrices(a.prices)
+	sum := a.sweep(1, 0) + a.capacityValue() - a.keepFreeValue() + a.bonusValue()
+	return math.Min(1, sum*(1+1e-9)+1e-12)
+}
+
+// keepFreeValue is what the nights' budgets take off the priced capacity. A
+// telescope-night's use (exposures and needed gaps) is at most its budget.
+// Split its prices into mu, the least of them, and the rest: the rest is
+// bounded slot by slot, mu by the budget and one trailing least gap, so that
+// mu (open - budget - least gap) need not be paid.
+func (a *Ascent) keepFreeValue() float64 {
+	var sum float64
+	for t := range a.p.Scopes {
+		if a.p.Scopes[t].KeepFree == 0 {
+			continue
+		}
+		for n := range a.p.Nights {
+			var open int64
+			for _, o := range a.p.OpenOuter(t, n) {
+				open += o.To - o.From
+			}
+			spare := open - a.p.Budget(t, n) - a.p.Scopes[t].LeastGap
+			if spare > 0 {
+				sum += a.peaks.minRate[t*a.p.Nights+n] * model.Sec(spare)
+			}
+		}
+	}
+	return sum
+}
+
+// bonusValue bounds the finish bonuses: every field that could finish is
+// taken to finish.
+func (a *Ascent) bonusValue() float64 {
+	b := a.p.Survey.FinishBonus
+	if b == 0 {
+		return 0
+	}
+	var sum float64
+	total := a.p.Survey.TotalWeight()
+	for f := range a.p.Survey.Fields {
+		if a.p.FieldWant[f] < a.p.FieldWant[f+1] {
+			sum += b * a.p.Survey.WeightOf(&a.p.Survey.Fields[f]) / ((1 + b) * total)
+		}
+	}
+	return sum
+}

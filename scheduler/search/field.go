@@ -1,0 +1,311 @@
+package search
+
+import (
+	"math"
+	"slices"
+
+	"nightwright/scheduler/model"
+)
+
+// placer takes a field's visits out and puts them back where they are worth
+// most: the one move of construction and sweeps.
+type placer struct {
+	s      *state
+	find   finder
+	choose chooser
+	mu     []float64 // [want] what the last visit was worth: spots much below are passed over
+	all    []spot
+	steps  [][]spot // of sets: spots by step
+	combos []combo
+	picked []int
+}
+
+// combo is a whole set on one telescope-night: a spot for each step.
+type combo struct{ spots []spot }
+
+// startBin is the width of the bins in which the finder keeps one spot, s.
+const startBin = 200
+
+func newPlacer(s *state, peaks peaker, mu []float64) *placer {
+	pl := &placer{s: s, mu: slices.Clone(mu)}
+	pl.find = finder{s: s, peaks: peaks, bin: startBin * model.Micro}
+	return pl
+}
+
+// skipBelow is how far under a want's multiplier a spot may be and still be
+// looked at.
+const skipBelow = 0.97
+
+// place re-places all visits of a field's wants and reports whether the plan
+// changed for the better (in score less theta times the price of time).
+func (pl *placer) place(field int) bool {
+	s := pl.s
+	s.begin()
+	before := pl.objective()
+	changed := false
+	for wi := s.p.FieldWant[field]; wi < s.p.FieldWant[field+1]; wi++ {
+		for _, id := range slices.Clone(s.of[wi]) {
+			if !s.visits[id].fixed {
+				s.remove(id)
+				changed = true
+			}
+		}
+	}
+	for wi := s.p.FieldWant[field]; wi < s.p.FieldWant[field+1]; wi++ {
+		if pl.fill(int(wi)) {
+			changed = true
+		}
+	}
+	s.stats.Placed++
+	if !changed {
+		s.commit()
+		return false
+	}
+	if after := pl.objective(); after < before {
+		s.rollback()
+		s.stats.Undone++
+		return false
+	} else if after > before {
+		s.stats.Better++
+	}
+	s.commit()
+	return true
+}
+
+// objective is what place compares: the score less theta times the price of
+// the time used on the nights it touches.
+func (pl *placer) objective() float64 {
+	s := pl.s
+	v := float64(s.score) / scoreUnit
+	if s.theta > 0 {
+		v -= s.theta * s.priced
+	}
+	return v
+}
+
+// fill adds visits of one want, as many as it lacks.
+func (pl *placer) fill(wi int) bool {
+	s := pl.s
+	w := &s.p.Wants[wi]
+	lack := int(w.Visits) - len(s.of[wi])
+	if lack <= 0 || len(w.Scopes) == 0 {
+		return false
+	}
+	least := skipBelow * pl.mu[wi]
+	pl.gather(wi, w, least)
+	var mu float64
+	pl.picked, mu = pl.choose.choose(w, pl.all, lack, pl.picked[:0])
+	if len(pl.picked) < lack && least > 0 {
+		least = 0
+		pl.gather(wi, w, least)
+		pl.picked, mu = pl.choose.choose(w, pl.all, lack, pl.picked[:0])
+	}
+	pl.mu[wi] = mu
+	done := 0
+	for k := range pl.picked {
+		if pl.putBack(wi, w, k) {
+			done++
+		}
+	}
+	return done > 0
+}
+
+// gather lists the want's spots over all telescopes and nights, by start.
+func (pl *placer) gather(wi int, w *model.Want, least float64) {
+	pl.find.spots = pl.find.spots[:0]
+	pl.combos = pl.combos[:0]
+	for _, t := range w.Scopes {
+		for n := range pl.s.p.Nights {
+			if len(w.Steps) == 1 {
+				pl.find.find(w, 0, t, n, least)
+			} else {
+				pl.gatherSet(w, t, n, least)
+			}
+		}
+	}
+	pl.all = append(pl.all[:0], pl.find.spots...)
+	if len(w.Steps) > 1 {
+		pl.all = pl.all[:0]
+		for i := range pl.combos {
+			c := &pl.combos[i]
+			sp := c.spots[0]
+			sp.profit = 0
+			for _, x := range c.spots {
+				sp.profit += x.profit
+			}
+			sp.combo = int32(i)
+			pl.all = append(pl.all, sp)
+		}
+	}
+	if fixed := pl.s.startsOf(int32(wi)); len(fixed) > 0 {
+		pl.all = slices.DeleteFunc(pl.all, func(sp spot) bool { return pl.s.tooNear(w, wi, sp) })
+	}
+	sortSpots(pl.all)
+}
+
+// tooNear reports whether a spot breaks the cadence with a visit that stays.
+func (s *state) tooNear(w *model.Want, wi int, sp spot) bool {
+	same := int32(0)
+	for _, id := range s.of[wi] {
+		v := &s.visits[id]
+		if d := sp.start - v.start; d < w.GapMin && -d < w.GapMin {
+			return true
+		}
+		if v.night == sp.night {
+			same++
+		}
+	}
+	return w.PerNight > 0 && same >= w.PerNight
+}
+
+// gatherSet combines spots of the steps of a set on one telescope-night.
+func (pl *placer) gatherSet(w *model.Want, t int32, n int, least float64) {
+	k := len(w.Steps)
+	for len(pl.steps) < k {
+		pl.steps = append(pl.steps, nil)
+	}
+	class := pl.s.p.Scopes[t].Class
+	total := 0.0
+	value := w.Value / float64(k)
+	for i := range w.Steps {
+		total += value * pl.find.peaks.Top(class, n, w.Steps[i].Filter, w.Unit)
+	}
+	if total <= least {
+		return
+	}
+	for i := range w.Steps {
+		own := value * pl.find.peaks.Top(class, n, w.Steps[i].Filter, w.Unit)
+		pl.find.spots = pl.find.spots[:0]
+		pl.find.find(w, i, t, n, least-(total-own))
+		pl.steps[i] = append(pl.steps[i][:0], pl.find.spots...)
+		if len(pl.steps[i]) == 0 {
+			return
+		}
+	}
+	for _, first := range pl.steps[0] {
+		if c, profit, ok := pl.chain(w, first); ok && profit > least {
+			pl.combos = append(pl.combos, combo{c})
+		}
+	}
+}
+
+// chain extends a first step greedily: for each later step the best spot
+// within its tolerance.
+func (pl *placer) chain(w *model.Want, first spot) ([]spot, float64, bool) {
+	c := make([]spot, 1, len(w.Steps))
+	c[0] = first
+	profit := first.profit
+	at := first.start
+	for j := 1; j < len(w.Steps); j++ {
+		st := &w.Steps[j]
+		best := -1
+		for i := range pl.steps[j] {
+			d := pl.steps[j][i].start - at - st.After
+			if d < -st.Tolerance || d > st.Tolerance {
+				continue
+			}
+			if best < 0 || pl.steps[j][i].profit > pl.steps[j][best].profit {
+				best = i
+			}
+		}
+		if best < 0 {
+			return nil, 0, false
+		}
+		c = append(c, pl.steps[j][best])
+		profit += pl.steps[j][best].profit
+		at = pl.steps[j][best].start
+	}
+	return c, profit, true
+}
+
+// putBack inserts the k-th picked visit, ejecting what makes room. It leaves
+// the plan as it was when that fails.
+func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
+	s := pl.s
+	sp := pl.all[pl.picked[k]]
+	parts := []spot{sp}
+	if len(w.Steps) > 1 {
+		parts = pl.combos[sp.combo].spots
+	}
+	// Cadence slack to the neighbours, half each.
+	lo, hi := int64(-maxShift), int64(maxShift)
+	if k > 0 {
+		lo = max(lo, -(sp.start-pl.all[pl.picked[k-1]].start-w.GapMin)/2)
+	}
+	if k+1 < len(pl.picked) {
+		hi = min(hi, (pl.all[pl.picked[k+1]].start-sp.start-w.GapMin)/2)
+	}
+	for _, id := range s.of[wi] {
+		v := &s.visits[id]
+		if d := sp.start - v.start; v.fixed && d > 0 {
+			lo = max(lo, -(d - w.GapMin))
+		} else if v.fixed {
+			hi = min(hi, -d-w.GapMin)
+		}
+	}
+	if lo > 0 || hi < 0 {
+		return false
+	}
+	mark := s.mark(sp.scope, sp.night)
+	for _, part := range parts {
+		if part.eject >= 0 && s.visits[part.eject].alive {
+			if s.visits[part.eject].want == int32(wi) {
+				s.undoTo(mark)
+				return false
+			}
+			s.remove(part.eject)
+			s.stats.Ejected++
+		}
+	}
+	id := s.newVisit(int32(wi), sp.scope, sp.night)
+	for j, part := range parts {
+		early, late, ok := s.shiftWindow(w, j, part, parts, lo, hi)
+		if !ok || !s.insert(id, j, min(max(part.start, early), late), early, late) {
+			s.undoTo(mark)
+			s.stats.Refused++
+			return false
+		}
+	}
+	s.stats.Inserted++
+	return true
+}
+
+// shiftWindow bounds the start of a step: the legal window it was found in,
+// the cadence slack, and half of what the set's tolerances leave.
+func (s *state) shiftWindow(w *model.Want, j int, part spot, parts []spot, lo, hi int64) (early, late int64, ok bool) {
+	length := s.p.Length(&w.Steps[j], part.scope)
+	early, late, ok = s.legalStarts(w, part.scope, int(part.night), part.start, length)
+	if !ok {
+		return 0, 0, false
+	}
+	if len(parts) > 1 {
+		slack := int64(math.MaxInt64)
+		if j > 0 {
+			d := part.start - parts[j-1].start - w.Steps[j].After
+			slack = min(slack, w.Steps[j].Tolerance-d, w.Steps[j].Tolerance+d)
+		}
+		if j+1 < len(parts) {
+			d := parts[j+1].start - part.start - w.Steps[j+1].After
+			slack = min(slack, w.Steps[j+1].Tolerance-d, w.Steps[j+1].Tolerance+d)
+		}
+		lo, hi = max(lo, -slack/2), min(hi, slack/2)
+	}
+	return max(early, part.start+lo), min(late, part.start+hi), true
+}
+
+// legalStarts returns the starts around t at which an exposure lies in one
+// window and one open interval with t.
+func (s *state) legalStarts(w *model.Want, scope int32, night int, t, length int64) (lo, hi int64, ok bool) {
+	for _, win := range s.p.Windows.Of(int(w.Unit), int(s.p.Scopes[scope].Class), night) {
+		wf, wt := s.p.Inward(win)
+		for _, o := range s.p.Open(int(scope), night) {
+			a, b := max(wf, o.From), min(wt, o.To)-length
+			if a <= t && t <= b {
+				if !ok || b-a > hi-lo {
+					lo, hi, ok = a, b, true
+				}
+			}
+		}
+	}
+	return lo, hi, ok
+}

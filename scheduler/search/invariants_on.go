@@ -1,0 +1,5 @@
+//go:build invariants
+
+package search
+
+const invariants = true

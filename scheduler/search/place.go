@@ -1,0 +1,292 @@
+package search
+
+import (
+	"math"
+	"sort"
+
+	"nightwright/constraints/mount"
+	"nightwright/scheduler/model"
+	"nightwright/visibility"
+	"nightwright/visibility/ephemeris"
+)
+
+// spot is a place where a step could go: the best of a start bin on one
+// telescope.
+type spot struct {
+	start  int64
+	profit float64 // C
+	scope  int32
+	night  int32
+	eject  int32 // visit that makes room, or -1
+	combo  int32 // of sets: the steps' spots
+}
+
+// finder lists the spots of one step of a want: one state read, nothing
+// changed. Each worker has its own.
+type finder struct {
+	s      *state
+	peaks  peaker
+	bin    int64 // width of the start bins, us
+	top    []float64
+	poses  []mount.Pointing
+	known  []bool
+	spots  []spot
+	value  float64 // of a step at quality 1
+	least  float64 // C: spots not above are of no use
+	w      *model.Want
+	step   int
+	scope  int32
+	night  int32
+	n      *night
+	g      *visibility.FrameGrid
+	c      ephemeris.Vec
+	length int64
+	lg     int64
+	probe  entry
+	budget int64
+}
+
+// peaker bounds a unit's quality in a night; the dual's peaks do.
+type peaker interface {
+	Top(class int32, night int, filter, unit int32) float64
+}
+
+// find appends to f.spots the best spot of each bin of one telescope-night
+// for a step of a want, in order of time, as far as it is worth more than
+// least. It returns the index of the first spot appended.
+func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, least float64) int {
+	from := len(f.spots)
+	s := f.s
+	open := s.p.Open(int(scope), nightIndex)
+	windows := s.p.Windows.Of(int(w.Unit), int(s.p.Scopes[scope].Class), nightIndex)
+	if len(open) == 0 || len(windows) == 0 {
+		return from
+	}
+	f.w, f.step, f.scope, f.night, f.least = w, step, scope, int32(nightIndex), least
+	f.value = w.Value / float64(len(w.Steps))
+	st := &w.Steps[step]
+	if f.value*f.peaks.Top(s.p.Scopes[scope].Class, nightIndex, st.Filter, w.Unit) <= least {
+		return from
+	}
+	f.n = &s.nights[int(scope)*s.p.Nights+nightIndex]
+	f.g = s.p.Grid(int(s.p.Scopes[scope].Site), nightIndex)
+	f.c = s.p.Sky.Direction(int(w.Field), f.g.From+f.g.Step*float64(len(f.g.Frames)/2))
+	f.length = s.p.Length(st, scope)
+	f.lg = s.p.Scopes[scope].LeastGap
+	f.budget = math.MaxInt64
+	if s.p.Scopes[scope].KeepFree > 0 {
+		f.budget = s.p.Budget(int(scope), nightIndex) - f.n.used
+	}
+	f.probe = entry{length: f.length, filter: int16(st.Filter)}
+	f.known = grow(f.known, len(f.g.Frames))
+	clear(f.known)
+	f.top = grow(f.top, len(f.g.Frames))
+	f.poses = grow(f.poses, len(f.g.Frames))
+	for _, win := range windows {
+		wf, wt := s.p.Inward(win)
+		for _, o := range open {
+			if lo, hi := max(wf, o.From), min(wt, o.To)-f.length; hi >= lo {
+				f.stretch(lo, hi)
+			}
+		}
+	}
+	return from
+}
+
+// know computes quality and pointing at a frame once.
+func (f *finder) know(k int) {
+	if f.known[k] {
+		return
+	}
+	f.known[k] = true
+	fr := &f.g.Frames[k]
+	f.top[k] = f.s.p.Sky.LitQuality(fr, int(f.w.Steps[f.step].Filter), f.g.Light(k, int(f.w.Steps[f.step].Filter)), f.c)
+	f.poses[k] = f.s.sight(f.scope, fr, f.c)
+}
+
+// quality estimates q of an exposure that starts at s, from the frames.
+func (f *finder) quality(s int64) float64 {
+	x := (model.Sec(s+f.length/2) - f.g.From) / f.g.Step
+	k := min(max(int(x), 0), len(f.g.Frames)-2)
+	f.know(k)
+	f.know(k + 1)
+	return f.top[k] + (x-float64(k))*(f.top[k+1]-f.top[k])
+}
+
+// aim estimates the pointing at an instant, from the frames.
+func (f *finder) aim(us int64) mount.Pointing {
+	x := (model.Sec(us) - f.g.From) / f.g.Step
+	k := min(max(int(x), 0), len(f.g.Frames)-2)
+	f.know(k)
+	f.know(k + 1)
+	u := x - float64(k)
+	a, b := &f.poses[k], &f.poses[k+1]
+	az := math.Remainder(b.Azimuth-a.Azimuth, 2*math.Pi)
+	ha := math.Remainder(b.HourAngle-a.HourAngle, 2*math.Pi)
+	return mount.Pointing{
+		Altitude:    a.Altitude + u*(b.Altitude-a.Altitude),
+		Azimuth:     a.Azimuth + u*az,
+		HourAngle:   math.Remainder(a.HourAngle+u*ha, 2*math.Pi),
+		Declination: a.Declination,
+	}
+}
+
+// stretch tries every position whose start can fall in [lo, hi].
+func (f *finder) stretch(lo, hi int64) {
+	list := f.n.list
+	m := len(list)
+	// The first position p (before list[p]) that can matter.
+	p := sort.Search(m, func(i int) bool { return list[i].start >= lo })
+	for p > 0 && f.n.first[p-1]+list[p-1].length > lo-30*60*model.Micro && list[p-1].end() > lo {
+		p--
+	}
+	for ; p <= m; p++ {
+		if p > 0 && f.n.first[p-1]+list[p-1].length+f.lg > hi {
+			break
+		}
+		f.position(p, p, lo, hi) // free insertion
+		if p < m {
+			f.position(p, p+1, lo, hi) // list[p] makes room
+		}
+	}
+}
+
+// position tries to go between list[p-1] and list[next]; when next > p the
+// entries between leave with their visits.
+func (f *finder) position(p, next int, lo, hi int64) {
+	n := f.n
+	list := n.list
+	m := len(list)
+	free, need := int64(0), f.length
+	lost := 0.0
+	eject := int32(-1)
+	// Where the start can be, with least gaps.
+	from, to := lo, hi
+	if p > 0 {
+		from = max(from, n.first[p-1]+list[p-1].length+f.lg)
+	}
+	if next < m {
+		to = min(to, n.last[next]-f.lg-f.length)
+	}
+	if to < from {
+		return
+	}
+	if next > p {
+		e := &list[p]
+		v := &f.s.visits[e.visit]
+		if v.fixed {
+			return
+		}
+		eject = e.visit
+		lost = float64(v.credit) / scoreUnit
+		if field := f.s.p.Wants[e.want].Field; f.s.got[field] == f.s.wanted[field] {
+			lost += float64(f.s.bonus[field]) / scoreUnit
+		}
+		free = e.length + n.gap[p]
+	}
+	// A bound before anything is computed in earnest.
+	seed := from
+	if p > 0 {
+		seed = min(max(seed, list[p-1].end()), to)
+	} else if next < m {
+		seed = max(seed, to-3600*model.Micro)
+	}
+	q := f.quality(seed)
+	if next > p {
+		rate := f.s.theta * f.s.price.At(int(f.scope), seed)
+		if f.value*q*1.02-lost-rate*model.Sec(need+f.lg-free) <= f.least {
+			return
+		}
+	} else if p > 0 && next < m {
+		// Between neighbours: quality hardly changes inside the gap.
+		if span := list[next].start - list[p-1].end(); span < f.bin && f.value*q*1.02 <= f.least {
+			return
+		}
+		if n.last[next]-n.first[p-1]-list[p-1].length < f.length+2*f.lg {
+			return
+		}
+	}
+	f.weigh(p, next, from, to, seed, free, lost, eject)
+}
+
+// weigh works out gaps and pushes and notes the worth of the position.
+func (f *finder) weigh(p, next int, from, to, seed, free int64, lost float64, eject int32) {
+	n := f.n
+	list := n.list
+	m := len(list)
+	f.probe.at = f.aim(seed)
+	f.probe.to = f.aim(seed + f.length)
+	f.probe.east = f.probe.at.HourAngle < 0
+	used := f.length - free
+	var before, after int64
+	left, right := int64(math.MinInt64/4), int64(math.MaxInt64/4)
+	if p > 0 {
+		before = f.s.gapBetween(f.scope, &list[p-1], &f.probe)
+		from = max(from, n.first[p-1]+list[p-1].length+before)
+		left = list[p-1].end() + before
+		used += before
+	}
+	if next < m {
+		after = f.s.gapBetween(f.scope, &f.probe, &list[next])
+		to = min(to, n.last[next]-after-f.length)
+		right = list[next].start - after - f.length
+		used += after - n.gap[next]
+	}
+	if to < from || used > f.budget {
+		return
+	}
+	if right >= left {
+		// Room without a push: the best of each bin.
+		a, b := max(left, from), min(right, to)
+		if a > b {
+			// Only with a push after all: the shift windows are narrow.
+			s := min(max(a, from), to)
+			f.note(s, p, next, left, right, used, lost, eject)
+			return
+		}
+		f.note(a, p, next, left, right, used, lost, eject)
+		if b-a > f.bin {
+			for s := (a/f.bin + 1) * f.bin; s < b; s += f.bin {
+				f.note(s, p, next, left, right, used, lost, eject)
+			}
+		}
+		if b > a {
+			f.note(b, p, next, left, right, used, lost, eject)
+		}
+		return
+	}
+	// Everything to the right moves, everything to the left, or half each.
+	f.note(min(max(left, from), to), p, next, left, right, used, lost, eject)
+	f.note(min(max(right, from), to), p, next, left, right, used, lost, eject)
+}
+
+// note keeps the start if it is the best of its bin.
+func (f *finder) note(s int64, p, next int, left, right, used int64, lost float64, eject int32) {
+	q := f.quality(s)
+	if q < f.w.MinQuality {
+		return
+	}
+	profit := f.value*q - lost - f.s.theta*f.s.price.At(int(f.scope), s)*model.Sec(used)
+	if profit <= f.least {
+		return
+	}
+	if s < left {
+		profit += f.n.pushLeft(p-1, left-s) / scoreUnit
+	}
+	if s > right {
+		profit += f.n.pushRight(next, s-right) / scoreUnit
+	}
+	if profit <= f.least {
+		return
+	}
+	if k := len(f.spots) - 1; k >= 0 {
+		last := &f.spots[k]
+		if last.scope == f.scope && last.night == f.night && last.start/f.bin == s/f.bin {
+			if profit > last.profit {
+				*last = spot{s, profit, f.scope, f.night, eject, 0}
+			}
+			return
+		}
+	}
+	f.spots = append(f.spots, spot{s, profit, f.scope, f.night, eject, 0})
+}

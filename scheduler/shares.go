@@ -1,0 +1,54 @@
+package scheduler
+
+import (
+	"fmt"
+
+	"nightwright/scheduler/model"
+)
+
+// shares works out each program's part of the scaled exposure time and
+// whether its bounds hold to within one visit.
+func shares(p *model.Problem, plan *model.Plan) []model.ShareOutcome {
+	sv := p.Survey
+	time := make([]float64, len(sv.Programs))
+	var all float64
+	for i := range plan.Exposures {
+		e := &plan.Exposures[i]
+		s := model.Sec(e.End - e.Start)
+		time[sv.Fields[e.Field].Program] += s
+		all += s
+	}
+	longest := make([]float64, len(sv.Programs))
+	for i := range p.Wants {
+		w := &p.Wants[i]
+		for _, t := range w.Scopes {
+			var s float64
+			for k := range w.Steps {
+				s += model.Sec(p.Length(&w.Steps[k], t))
+			}
+			longest[w.Program] = max(longest[w.Program], s)
+		}
+	}
+	out := make([]model.ShareOutcome, len(sv.Programs))
+	for i := range sv.Programs {
+		pr := &sv.Programs[i]
+		o := model.ShareOutcome{Program: int32(i), Min: pr.ShareMin, Max: pr.ShareMax}
+		if all > 0 {
+			o.Share = time[i] / all
+		}
+		visit := 0.0
+		if all > 0 {
+			visit = longest[i] / all
+		}
+		switch {
+		case o.Share < o.Min-visit:
+			o.Breach = o.Min - o.Share
+			o.Why = fmt.Sprintf("program %s has too little time that its fields can use", pr.Name)
+		case o.Share > o.Max+visit:
+			o.Breach = o.Share - o.Max
+			o.Why = fmt.Sprintf("the other programs can't use enough time beside program %s", pr.Name)
+		}
+		out[i] = o
+	}
+	return out
+}

@@ -1,0 +1,100 @@
+// Package scheduler plans a survey: it prices telescope time, proves a
+// ceiling on the coverage, and fills the nights against those prices. It is
+// the conductor over the rooms below it (dual, search) and knows no files,
+// terminals or clocks.
+package scheduler
+
+import (
+	"context"
+	"errors"
+	"fmt"
+
+	"nightwright/constraints"
+	"nightwright/constraints/survey"
+	"nightwright/scheduler/dual"
+	"nightwright/scheduler/model"
+	"nightwright/scheduler/search"
+	"nightwright/visibility"
+)
+
+// Input is everything a solver needs; all of it belongs to the same survey.
+type Input struct {
+	Survey   *survey.Survey
+	Sky      *visibility.Sky
+	Calendar *constraints.Calendar
+	Windows  *constraints.Windows
+	Workers  int
+}
+
+// Params steer a search. Steps, not seconds, decide the result; a context
+// with a deadline or a cancelled one ends it early, with the best plan so far
+// and a Status that says so.
+type Params struct {
+	Effort   string // quick, normal (the default) or thorough
+	Seed     uint64
+	Progress func(model.Progress) // nil: none
+}
+
+// Solve plans the survey.
+func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error) {
+	effort, ok := efforts[params.Effort]
+	if !ok {
+		return nil, fmt.Errorf("scheduler: effort %q is not known; want quick, normal or thorough", params.Effort)
+	}
+	p, err := model.NewProblem(in.Survey, in.Sky, in.Calendar, in.Windows, in.Workers)
+	if err != nil {
+		return nil, err
+	}
+	c := &conductor{p: p, ctx: ctx, effort: effort, report: params.Progress}
+	if c.report == nil {
+		c.report = func(model.Progress) {}
+	}
+	out := c.solve(params.Seed)
+	out.Effort, out.Seed = params.Effort, params.Seed
+	return out, nil
+}
+
+// conductor runs the phases of one solve.
+type conductor struct {
+	p      *model.Problem
+	ctx    context.Context
+	effort effort
+	report func(model.Progress)
+}
+
+func (c *conductor) solve(seed uint64) *model.Outcome {
+	c.report(model.Progress{Phase: "peaks"})
+	peaks := dual.NewPeaks(c.p)
+	ascent := dual.NewAscent(c.p, peaks)
+	for i, lv := range c.effort.levels {
+		phase := fmt.Sprintf("prices %d of %d", i+1, len(c.effort.levels))
+		ascent.Run(c.ctx, lv, func(step, of int, bound float64) {
+			c.report(model.Progress{Phase: phase, Done: step, Total: of, Ceiling: bound})
+		})
+	}
+	c.report(model.Progress{Phase: "ceiling"})
+	ceiling := ascent.Ceiling(c.effort.ceilingBin)
+	c.report(model.Progress{Phase: "ceiling", Done: 1, Total: 1, Ceiling: ceiling})
+	s := search.New(c.p, ascent.Prices(), peaks, ascent.Oracle().Mu, seed)
+	s.Construct(c.ctx, c.effort.construct, func(done, of int) {
+		c.report(model.Progress{Phase: "construction", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
+	})
+	for i, theta := range c.effort.sweeps {
+		phase := fmt.Sprintf("sweep %d of %d", i+1, len(c.effort.sweeps))
+		s.Sweep(c.ctx, theta, func(done, of int) {
+			c.report(model.Progress{Phase: phase, Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
+		})
+	}
+	status := model.StepsDone
+	if err := c.ctx.Err(); err != nil {
+		status = model.Interrupted
+		if errors.Is(err, context.DeadlineExceeded) {
+			status = model.TimeLimit
+		}
+	}
+	plan := s.Plan()
+	return &model.Outcome{
+		Plan: plan, Coverage: s.Coverage(), Ceiling: ceiling, Status: status,
+		Prices: ascent.Prices().List(), Stats: s.Stats().List(), Shares: shares(c.p, plan),
+	}
+}
