@@ -69,7 +69,11 @@ func ParseUTC(s string) (UTC, error) {
 // second the seconds read 60.
 func (u UTC) String() string {
 	day := time.Unix(int64(u.MJD-unixMJD)*86400, 0).UTC()
-	ms := int64(math.Floor(u.Second*1000 + 1e-6))
+	// To the microsecond first: Unix s carry an error of that size.
+	ms := int64(math.Round(u.Second*1e6)) / 1000
+	if u.Second < 86400 {
+		ms = min(ms, 86399999) // never a :60 that isn't there
+	}
 	minute := min(ms/60000, 1439)
 	rest := ms - minute*60000
 	return fmt.Sprintf("%sT%02d:%02d:%02d.%03dZ", day.Format(time.DateOnly), minute/60, minute%60, rest/1000, rest%1000)

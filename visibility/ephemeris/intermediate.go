@@ -40,7 +40,8 @@ func TrueEcliptic(t float64) Mat {
 
 // CelestialToIntermediate turns to the celestial intermediate frame: true
 // equator, right ascension from the celestial intermediate origin. Error
-// within 2015-2045 against IAU 2006/2000A: under 1.5 mas, that of Nutation.
+// against IAU 2006/2000A in 1972-2060: rms 0.4 mas, max 1 mas an element, that
+// of Nutation.
 func CelestialToIntermediate(t float64) Mat {
 	m := TrueEquator(t)
 	return intermediate(m[2], locator(t, m[2]))

@@ -29,7 +29,8 @@ func GMST(era, t float64) float64 {
 
 // GAST returns Greenwich apparent sidereal time, rad in [0, 2 pi), from the
 // Earth rotation angle and t (TT, Julian centuries since J2000.0): the angle
-// less the equation of the origins. Error under 1.5 mas, that of Nutation.
+// less the equation of the origins. Error rms 0.5 mas, max 1.9 mas in
+// 1972-2060, that of Nutation.
 func GAST(era, t float64) float64 { return positive(era - EquationOfOrigins(t)) }
 
 // positive brings an angle into [0, 2 pi).
