@@ -10,8 +10,8 @@ import (
 // concurrent use.
 //
 // Instants are Unix s (leap seconds not counted) or UTC values, which also
-// reach into leap seconds. TT is TAI + 32.184 s; TDB is taken as TT, which
-// differs by less than 1.7 ms (0.06" of the Moon at most 1 mas here).
+// reach into leap seconds. TT is TAI + 32.184 s; TDB is taken as TT: they
+// differ by less than 1.7 ms, in which the Moon moves by 0.9 mas.
 type Clock struct {
 	leap *LeapTable
 	dut1 float64
@@ -85,7 +85,7 @@ func (c *Clock) dut1At(unix, tai float64) float64 {
 	}
 	d := unix/dayS + unixMJD
 	switch {
-	case d <= c.mjd[0]:
+	case !(d > c.mjd[0]): // also for NaN, which the search below couldn't place
 		return c.first.DUT1
 	case d >= c.mjd[n-1]:
 		return c.last.DUT1

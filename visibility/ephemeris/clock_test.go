@@ -106,7 +106,10 @@ func TestDUT1AcrossALeapSecond(t *testing.T) {
 			t.Errorf("UT1 moved by %.9f s in a second", step*86400)
 		}
 	}
-	// Beyond the rows the nearest value holds.
+	// Beyond the rows the nearest value holds; nonsense gives nonsense, no panic.
+	if got := c.ERA(math.NaN()); !math.IsNaN(got) {
+		t.Errorf("ERA of NaN: %g", got)
+	}
 	if got := c.DUT1(0); got != -0.4069175 {
 		t.Errorf("before the table: %g", got)
 	}
@@ -211,9 +214,9 @@ func TestFinals2000ASample(t *testing.T) {
 	if len(rows) != 12 || rows[0] != (DUT1Row{57502, -0.1251404}) || rows[11] != (DUT1Row{57513, -0.1424457}) {
 		t.Errorf("%d rows, %v to %v", len(rows), rows[0], rows[len(rows)-1])
 	}
-	crlf := strings.ReplaceAll(b.String(), "\n", "\r\n")
+	crlf := "\ufeff" + strings.ReplaceAll(b.String(), "\n", "\r\n")
 	again, err := ParseFinals2000A(strings.NewReader(crlf))
 	if err != nil || len(again) != 12 {
-		t.Errorf("with CRLF: %d rows, %v", len(again), err)
+		t.Errorf("with byte order mark and CRLF: %d rows, %v", len(again), err)
 	}
 }

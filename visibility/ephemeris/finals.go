@@ -26,7 +26,7 @@ func ParseFinals2000A(r io.Reader) ([]DUT1Row, error) {
 	sc := bufio.NewScanner(r)
 	for sc.Scan() {
 		n++
-		line := strings.TrimRight(sc.Text(), " \t\r")
+		line := strings.TrimRight(strings.TrimPrefix(sc.Text(), "\ufeff"), " \t\r")
 		if line == "" {
 			continue
 		}

@@ -32,8 +32,8 @@ func UTCFromUnix(unix float64) UTC {
 	return UTC{MJD: int(day) + unixMJD, Second: unix - day*86400}
 }
 
-// Unix returns Unix s; an instant inside a leap second gets that of the same
-// reading one second later, as POSIX counts.
+// Unix returns Unix s; 23:59:60.x gets the value of 00:00:00.x a second later,
+// as POSIX counts.
 func (u UTC) Unix() float64 {
 	return float64(u.MJD-unixMJD)*86400 + u.Second
 }

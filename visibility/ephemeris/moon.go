@@ -5,6 +5,8 @@ import "math"
 // MoonGeocentric returns the geometric place of the Moon seen from the
 // Earth's centre (no light time), km, GCRS axes; t is TT (for TDB) in Julian
 // centuries since J2000.0. Source: Meeus 1998, Astronomical Algorithms, ch. 47.
+// Error against JPL DE405 over 60,000 instants: 2015-2045 direction rms 3.0",
+// max 14.9", distance rms 3 km, max 12 km; 1972-2060 max 17.4" and 13 km.
 func MoonGeocentric(t float64) Vec {
 	lon, lat, dist := MoonEcliptic(t)
 	sl, cl := math.Sincos(lon)
