@@ -32,6 +32,8 @@ type siteCalendar struct {
 type scopeCalendar struct {
 	site     int
 	keepFree float64
+	limit    float64                 // the loosest Sun limit
+	served   bool                    // some demand may use it
 	open     [][]visibility.Interval // by night; after reserves
 	before   [][]visibility.Interval // by night; before closures, losses and reserves
 	closed   [][]visibility.Interval // by night
@@ -79,11 +81,12 @@ func NewCalendar(sv *survey.Survey, e *visibility.Exact, losses [][]visibility.I
 	for t := range sv.Telescopes {
 		o := &c.telescopes[t]
 		o.site, o.keepFree = sv.Telescopes[t].Site, sv.Telescopes[t].KeepFree
+		o.limit, o.served = loosest[t], served[t]
 		var lost []visibility.Interval
 		if t < len(losses) {
 			lost = union(slices.Clone(losses[t]))
 		}
-		o.fill(sv, c, t, loosest[t], served[t], lost)
+		o.fill(sv, c, t, lost)
 	}
 	return c
 }
@@ -136,7 +139,7 @@ func (s *siteCalendar) stored(n int, limit float64) ([]visibility.Interval, bool
 	return s.below[n][k], true
 }
 
-func (o *scopeCalendar) fill(sv *survey.Survey, c *Calendar, t int, loosest float64, served bool, lost []visibility.Interval) {
+func (o *scopeCalendar) fill(sv *survey.Survey, c *Calendar, t int, lost []visibility.Interval) {
 	o.open = make([][]visibility.Interval, c.nights)
 	o.before = make([][]visibility.Interval, c.nights)
 	o.closed = make([][]visibility.Interval, c.nights)
@@ -148,10 +151,10 @@ func (o *scopeCalendar) fill(sv *survey.Survey, c *Calendar, t int, loosest floa
 		label := sv.FirstNight + survey.Day(n)
 		o.closed[n] = union(closedIn(closedIn(nil, sv.Sites[o.site].Closures, label, night), tel.Closures, label, night))
 		o.lost[n] = intersect(nil, lost, []visibility.Interval{night})
-		if !served {
+		if !o.served {
 			continue
 		}
-		o.before[n], _ = c.sites[o.site].stored(n, loosest)
+		o.before[n], _ = c.sites[o.site].stored(n, o.limit)
 		left := subtract(nil, subtract(nil, o.before[n], o.closed[n]), o.lost[n])
 		o.reserved[n] = union(reservedIn(nil, tel.Reserved, left))
 		o.open[n] = subtract(nil, left, o.reserved[n])
@@ -182,6 +185,12 @@ func (c *Calendar) NightAt(site int, unix float64) (int, bool) {
 // exposures lie within it. The caller must not change it.
 func (c *Calendar) Open(telescope, night int) []visibility.Interval {
 	return c.telescopes[telescope].open[night]
+}
+
+// loosest returns the highest Sun limit of the demands that a telescope may
+// serve, and false when there are none.
+func (c *Calendar) loosest(telescope int) (float64, bool) {
+	return c.telescopes[telescope].limit, c.telescopes[telescope].served
 }
 
 // Reserved returns the reserved blocks of a telescope's night, joined.

@@ -14,7 +14,6 @@ type mask struct {
 	sin     []float64 // of az
 	cos     []float64
 	max     float64 // highest altitude; -pi when there is no mask
-	steep   float64 // greatest |slope|
 }
 
 func newMask(points []survey.HorizonPoint) mask {
@@ -31,7 +30,6 @@ func newMask(points []survey.HorizonPoint) mask {
 		m.az, m.alt = append(m.az, p.Azimuth), append(m.alt, p.Altitude)
 		m.slope, m.sin, m.cos = append(m.slope, slope), append(m.sin, s), append(m.cos, c)
 		m.max = math.Max(m.max, p.Altitude)
-		m.steep = math.Max(m.steep, math.Abs(slope))
 	}
 	return m
 }
@@ -51,11 +49,10 @@ func (m *mask) piece(az float64) int {
 	return k
 }
 
-// along is the altitude of piece k's line at an azimuth, unwrapped to lie
-// within half a turn of the piece.
+// along is the altitude of piece k's line at an azimuth of that piece.
 func (m *mask) along(k int, az float64) float64 {
 	d := az - m.az[k]
-	if d < -math.Pi/2 { // a piece is entered from its vertex; allow for rounding
+	if d < 0 { // the last piece, past north
 		d += 2 * math.Pi
 	}
 	return m.alt[k] + m.slope[k]*d
@@ -64,11 +61,25 @@ func (m *mask) along(k int, az float64) float64 {
 // HorizonAltitude returns the altitude of a site's horizon mask at an azimuth
 // in [0, 2 pi), rad; -pi/2 without a mask.
 func HorizonAltitude(points []survey.HorizonPoint, azimuth float64) float64 {
-	if len(points) == 0 {
+	n := len(points)
+	if n == 0 {
 		return -math.Pi / 2
 	}
-	m := newMask(points)
-	return m.along(m.piece(azimuth), azimuth)
+	i := n - 1 // the vertex at or before: the last one when all are after
+	for k := range points {
+		if points[k].Azimuth <= azimuth {
+			i = k
+		}
+	}
+	p, q := points[i], points[(i+1)%n]
+	width, along := q.Azimuth-p.Azimuth, azimuth-p.Azimuth
+	if width <= 0 {
+		width += 2 * math.Pi
+	}
+	if along < 0 {
+		along += 2 * math.Pi
+	}
+	return p.Altitude + (q.Altitude-p.Altitude)*along/width
 }
 
 // belowHorizon tells whether a field stands below the site's mask.
@@ -131,9 +142,6 @@ func (c *cell) vertexTimes(dst []float64, m *mask, v int, x visibility.Interval)
 // underLine appends the part of [from, to], within one piece of the mask, in
 // which the field may be (inner) or surely is (outer) below it.
 func (c *cell) underLine(dst []visibility.Interval, m *mask, from, to float64) []visibility.Interval {
-	if to-from < 1e-6 {
-		return join(dst, from, to)
-	}
 	_, mid := c.altAz((from + to) / 2)
 	k := m.piece(mid)
 	// The altitude is under the mask's highest point here: with H that height,

@@ -23,22 +23,32 @@ type Sight struct {
 	Quality           float64 // of the filter asked for
 }
 
-// ExactSight works out a sight by the exact path, with the quality in the
-// given filter.
-func ExactSight(e *visibility.Exact, site visibility.Site, p visibility.Position, f visibility.Filter, unix float64) Sight {
-	star, sun, moon := e.Star(site, p, unix), e.Sun(site, unix), e.Moon(site, unix)
-	s := Sight{
-		Unix: unix, Altitude: star.Altitude, Azimuth: star.Azimuth, SinAltitude: math.Sin(star.Altitude),
+// SightAt works out a sight by the exact path, without quality.
+func SightAt(n *visibility.Instant, site visibility.Site, p visibility.Position) Sight {
+	star, sun, moon := n.Star(site, p), n.Sun(site), n.Moon(site)
+	return Sight{
+		Unix: n.Unix, Altitude: star.Altitude, Azimuth: star.Azimuth, SinAltitude: math.Sin(star.Altitude),
 		HourAngle: star.HourAngle, Declination: star.Declination,
 		SunAltitude: sun.Altitude, MoonAltitude: moon.Altitude,
 		MoonSeparation:   visibility.Separation(star, moon.Horizontal),
 		MoonIllumination: moon.Illumination, MoonPhaseAngle: moon.PhaseAngle,
 	}
-	s.Quality = visibility.Quality(f, visibility.Geometry{
+}
+
+// ExactSight is SightAt with the quality in a filter.
+func ExactSight(e *visibility.Exact, site visibility.Site, p visibility.Position, f visibility.Filter, unix float64) Sight {
+	s := SightAt(e.At(unix), site, p)
+	s.Quality = s.QualityIn(f)
+	return s
+}
+
+// QualityIn returns q in a filter by the plain formula; it needs the phase
+// angle, which only the exact path gives.
+func (s *Sight) QualityIn(f visibility.Filter) float64 {
+	return visibility.Quality(f, visibility.Geometry{
 		SinAltitude: s.SinAltitude, SunAltitude: s.SunAltitude, MoonAltitude: s.MoonAltitude,
 		MoonSeparation: s.MoonSeparation, MoonPhaseAngle: s.MoonPhaseAngle,
 	})
-	return s
 }
 
 // SkySight works out a sight from the sky's tables: a frame of the site and

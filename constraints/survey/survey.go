@@ -24,6 +24,7 @@ type Survey struct {
 	Seed        uint64
 	FinishBonus float64 // b in the coverage formula, >= 0
 	Orientation ephemeris.Orientation
+	LeapSeconds *ephemeris.LeapTable // nil: the embedded table
 	Filters     []visibility.Filter
 	Programs    []Program
 	Sites       []Site
