@@ -39,13 +39,14 @@ func (a *Account) Greatest() (Reasons, bool) {
 	return Reason(best), true
 }
 
-// Accounts holds the accounts of all demands of all fields.
+// Accounts holds the accounts of all demands of the fields asked for.
 type Accounts struct {
 	first []int32 // by field
 	rows  []Account
 }
 
-// Of returns the account of a field's demand.
+// Of returns the account of a field's demand; the field must be one of those
+// asked for.
 func (a *Accounts) Of(field, demand int) *Account { return &a.rows[int(a.first[field])+demand] }
 
 // tally counts samples, so that sums don't depend on their order.
@@ -54,14 +55,20 @@ type tally struct {
 	alone, inOrder [ReasonCount]int32
 }
 
-// NewAccounts samples the whole survey every step seconds, at multiples of
-// step since 00:00Z; a multiple of the slot puts the samples at slot starts.
+// NewAccounts samples some fields (by id; nil: all of them) every step seconds
+// of the whole period, at multiples of step since 00:00Z; a multiple of the
+// slot puts the samples at slot starts.
 // min_quality is judged at the sample as if an exposure's middle were there,
 // in the filter of each exposure of the demand. It errs only when ctx ends.
-func NewAccounts(ctx context.Context, sv *survey.Survey, sky *visibility.Sky, cal *Calendar, step float64, workers int) (*Accounts, error) {
+func NewAccounts(ctx context.Context, sv *survey.Survey, sky *visibility.Sky, cal *Calendar, fields []int, step float64, workers int) (*Accounts, error) {
 	a := &Accounts{first: make([]int32, len(sv.Fields))}
+	if fields == nil {
+		for i := range sv.Fields {
+			fields = append(fields, i)
+		}
+	}
 	n := 0
-	for i := range sv.Fields {
+	for _, i := range fields {
 		a.first[i] = int32(n)
 		n += len(sv.Fields[i].Rules)
 	}
@@ -69,7 +76,7 @@ func NewAccounts(ctx context.Context, sv *survey.Survey, sky *visibility.Sky, ca
 	counts := make([][]tally, chunks)
 	parallel(workers, chunks, func(k int) {
 		counts[k] = make([]tally, n)
-		s := sampler{sv: sv, sky: sky, cal: cal, first: a.first, rows: counts[k], step: step}
+		s := sampler{sv: sv, sky: sky, cal: cal, fields: fields, first: a.first, rows: counts[k], step: step}
 		for night := k; night < cal.Nights(); night += chunks {
 			for site := range sv.Sites {
 				if ctx.Err() == nil {
@@ -102,6 +109,7 @@ type sampler struct {
 	sv      *survey.Survey
 	sky     *visibility.Sky
 	cal     *Calendar
+	fields  []int
 	first   []int32
 	rows    []tally
 	step    float64
@@ -126,19 +134,20 @@ func (s *sampler) night(site, night int) {
 		for _, t := range s.sv.Sites[site].Telescopes {
 			s.scopes = append(s.scopes, s.cal.Reasons(t, fr.T))
 		}
-		for f := range s.sv.Fields {
-			s.field(site, f, &fr)
+		b := skyBodies(&fr)
+		for _, f := range s.fields {
+			s.field(site, f, &fr, b)
 		}
 	}
 }
 
-func (s *sampler) field(site, f int, fr *visibility.Frame) {
+func (s *sampler) field(site, f int, fr *visibility.Frame, b bodies) {
 	c := s.sky.Direction(f, fr.T)
 	if fr.SinAltitude(c) <= 0 {
 		return
 	}
 	fd := &s.sv.Fields[f]
-	sight := SkySight(s.sky, fr, f, 0)
+	sight := b.sight(fr, c)
 	s.quality = s.quality[:0]
 	for range s.sv.Filters {
 		s.quality = append(s.quality, -1)

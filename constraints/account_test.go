@@ -11,7 +11,7 @@ import (
 func TestAccountsAddUp(t *testing.T) {
 	sv := randomSurvey(21, 30)
 	b := build(t, sv, 1)
-	a, err := NewAccounts(t.Context(), sv, b.sky, b.cal, 600, 2)
+	a, err := NewAccounts(t.Context(), sv, b.sky, b.cal, nil, 600, 2)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -48,7 +48,7 @@ func TestAccountsAgreeWithWindows(t *testing.T) {
 	}
 	sv.Telescopes[0].Reserved = []survey.Reserved{{At: survey.AtOpening, Takes: 3600}}
 	b := build(t, sv, 1)
-	a, err := NewAccounts(t.Context(), sv, b.sky, b.cal, 60, 1)
+	a, err := NewAccounts(t.Context(), sv, b.sky, b.cal, nil, 60, 1)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -69,7 +69,7 @@ func TestAccountNamesTheRule(t *testing.T) {
 	f.Dec = 5 * deg
 	f.Rules[0].AltitudeMin = 80 * deg // never that high from latitude 33
 	b := build(t, sv, 1)
-	a, err := NewAccounts(t.Context(), sv, b.sky, b.cal, 600, 1)
+	a, err := NewAccounts(t.Context(), sv, b.sky, b.cal, []int{0}, 600, 1)
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -40,7 +40,7 @@ func BenchmarkNewAccounts(b *testing.B) {
 	e := newExact()
 	sky, cal := Tables(sv, e, 2), NewCalendar(sv, e, nil)
 	for b.Loop() {
-		if _, err := NewAccounts(b.Context(), sv, sky, cal, 3600, 2); err != nil {
+		if _, err := NewAccounts(b.Context(), sv, sky, cal, nil, 3600, 2); err != nil {
 			b.Fatal(err)
 		}
 	}

@@ -48,3 +48,27 @@ func Tables(sv *survey.Survey, e *visibility.Exact, workers int) *visibility.Sky
 	p := Period(sv)
 	return visibility.NewSky(e, Sites(sv), sv.Filters, Positions(sv), p.From, p.To, workers)
 }
+
+// EstimateBytes returns about how much memory the windows of a survey will
+// take: an index entry a cell (unit, class, night), and one window in each of
+// half of them, as surveys over both hemispheres have.
+func EstimateBytes(sv *survey.Survey) int64 {
+	w := Windows{sv: sv}
+	w.setClasses()
+	units := 0
+	for i := range sv.Fields {
+		rules := sv.Fields[i].Rules
+		for j := range rules {
+			same := false
+			for k := range j {
+				a, b := rules[j], rules[k]
+				a.MinQuality, b.MinQuality = 0, 0
+				same = same || a == b
+			}
+			if !same {
+				units++
+			}
+		}
+	}
+	return int64(units) * int64(len(w.classes)) * int64(sv.Nights()) * (4 + 8/2)
+}

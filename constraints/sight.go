@@ -5,6 +5,7 @@ import (
 
 	"nightwright/constraints/survey"
 	"nightwright/visibility"
+	"nightwright/visibility/ephemeris"
 )
 
 // Sight is the geometry of one field over one site at one instant: all that
@@ -55,12 +56,23 @@ func (s *Sight) QualityIn(f visibility.Filter) float64 {
 // the field's id, with the quality in the given filter. fr must be of the
 // same sky.
 func SkySight(sky *visibility.Sky, fr *visibility.Frame, field, filter int) Sight {
+	bodies := skyBodies(fr)
 	c := sky.Direction(field, fr.T)
+	s := bodies.sight(fr, c)
+	s.Quality = sky.Quality(fr, filter, c)
+	return s
+}
+
+// bodies is the part of a sight that all fields of a frame share.
+type bodies struct{ sun, moon float64 }
+
+func skyBodies(fr *visibility.Frame) bodies { return bodies{asin(fr.SinSun), asin(fr.SinMoon)} }
+
+func (b bodies) sight(fr *visibility.Frame, c ephemeris.Vec) Sight {
 	s := Sight{
 		Unix: fr.T, SinAltitude: fr.SinAltitude(c), HourAngle: fr.HourAngle(c), Declination: visibility.Declination(c),
-		SunAltitude: asin(fr.SinSun), MoonAltitude: asin(fr.SinMoon), MoonIllumination: fr.Illumination,
+		SunAltitude: b.sun, MoonAltitude: b.moon, MoonIllumination: fr.Illumination,
 		MoonSeparation: math.Acos(max(-1, min(1, fr.Moon.Dot(c)))),
-		Quality:        sky.Quality(fr, filter, c),
 	}
 	s.Altitude, s.Azimuth = fr.AltAz(c)
 	return s
@@ -78,22 +90,39 @@ func Evaluate(sv *survey.Survey, field, demand, telescope int, s *Sight) Reasons
 	t := &sv.Telescopes[telescope]
 	r := &f.Rules[demand]
 	var out Reasons
-	set := func(broken bool, which Reasons) {
-		if broken {
-			out |= which
-		}
+	if outsideDates(s, f) {
+		out |= Dates
 	}
-	set(outsideDates(s, f), Dates)
-	set(sunTooHigh(s, r.SunAltitudeMax), Sun)
-	set(tooLow(s, r.AltitudeMin), Altitude)
-	set(overAirmass(s, r.AirmassMax), Airmass)
-	set(pastHourAngle(s, r.HourAngleMax), HourAngle)
-	set(belowHorizon(s, sv.Sites[t.Site].Horizon), Horizon)
-	set(outsideMountAltitude(s, t), MountAltitude)
-	set(outsideAzimuth(s, t), AzimuthRange)
-	set(brightMoon(s, r.MoonIlluminationMax), MoonIllumination)
-	set(nearMoon(s, r.MoonSeparationMin), MoonSeparation)
-	set(poorQuality(s, r.MinQuality), Quality)
+	if sunTooHigh(s, r.SunAltitudeMax) {
+		out |= Sun
+	}
+	if tooLow(s, r.AltitudeMin) {
+		out |= Altitude
+	}
+	if overAirmass(s, r.AirmassMax) {
+		out |= Airmass
+	}
+	if pastHourAngle(s, r.HourAngleMax) {
+		out |= HourAngle
+	}
+	if belowHorizon(s, sv.Sites[t.Site].Horizon) {
+		out |= Horizon
+	}
+	if outsideMountAltitude(s, t) {
+		out |= MountAltitude
+	}
+	if outsideAzimuth(s, t) {
+		out |= AzimuthRange
+	}
+	if brightMoon(s, r.MoonIlluminationMax) {
+		out |= MoonIllumination
+	}
+	if nearMoon(s, r.MoonSeparationMin) {
+		out |= MoonSeparation
+	}
+	if poorQuality(s, r.MinQuality) {
+		out |= Quality
+	}
 	return out
 }
 

@@ -4,6 +4,7 @@ import (
 	"context"
 	"math"
 	"slices"
+	"sync"
 
 	"nightwright/constraints/survey"
 	"nightwright/visibility"
@@ -68,12 +69,16 @@ func NewWindows(ctx context.Context, sv *survey.Survey, sky *visibility.Sky, cal
 	for i := range sites {
 		sites[i] = newSitePlan(w, i, needed)
 	}
+	// Scratch space goes from night to night; nothing of it stays.
+	pool := sync.Pool{New: func() any { return new(scratch) }}
 	parallel(workers, cal.Nights(), func(n int) {
 		if ctx.Err() != nil {
 			return
 		}
-		b := nightBuilder{w: w, needed: needed, sky: sky, cal: cal, night: n}
+		mem := pool.Get().(*scratch)
+		b := nightBuilder{w: w, needed: needed, sky: sky, cal: cal, night: n, scratch: mem}
 		w.nights[n] = b.build(sites)
+		pool.Put(mem)
 	})
 	if err := ctx.Err(); err != nil {
 		return nil, err
@@ -143,14 +148,18 @@ func (w *Windows) UsableHours(field, demand int) float64 {
 	d := &sv.Programs[f.Program].Demands[demand]
 	u := w.Unit(field, demand)
 	var usable, stretch, part []visibility.Interval
+	var scopes []int
 	sum := 0.0
 	for s := range sv.Sites {
+		scopes = scopes[:0]
+		for _, t := range sv.Sites[s].Telescopes {
+			if sv.Qualifies(f, d, t) {
+				scopes = append(scopes, t)
+			}
+		}
 		for n := range w.nights {
 			usable = usable[:0]
-			for _, t := range sv.Sites[s].Telescopes {
-				if !sv.Qualifies(f, d, t) {
-					continue
-				}
+			for _, t := range scopes {
 				stretch = stretch[:0]
 				for _, x := range w.Of(u, w.Class(t), n) {
 					stretch = append(stretch, w.Interval(x))
@@ -158,7 +167,9 @@ func (w *Windows) UsableHours(field, demand int) float64 {
 				part = intersect(part[:0], union(stretch), w.calendar.Open(t, n))
 				usable = append(usable, part...)
 			}
-			sum += seconds(union(usable))
+			if len(usable) > 0 {
+				sum += seconds(union(usable))
+			}
 		}
 	}
 	return sum / 3600

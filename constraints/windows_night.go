@@ -132,7 +132,7 @@ type nightSky struct {
 	angle float64 // local Earth rotation angle at mid
 	pad   float64 // s, on edges: timePad, and how far the Earth's turning departs from uniform
 	sun   [][]visibility.Interval
-	dirs  []place // by field; zero where not needed
+	dirs  []place // by field; of no meaning where not needed
 	track bodyTrack
 	up    [2][]visibility.Interval // when the Moon may be up [inner], is surely up [outer]
 }
@@ -145,8 +145,8 @@ type place struct {
 }
 
 // newNightSky prepares a site's night, or returns nil when it has no dark
-// time.
-func newNightSky(p *sitePlan, sky *visibility.Sky, cal *Calendar, night int) *nightSky {
+// time; mem, of a place a field, becomes part of it.
+func newNightSky(p *sitePlan, sky *visibility.Sky, cal *Calendar, night int, mem []place) *nightSky {
 	if len(p.limits) == 0 {
 		return nil
 	}
@@ -174,7 +174,7 @@ func newNightSky(p *sitePlan, sky *visibility.Sky, cal *Calendar, night int) *ni
 	if p.moon {
 		ns.moonUp(from, to)
 	}
-	ns.dirs = make([]place, len(p.fields))
+	ns.dirs = mem
 	for f, needed := range p.fields {
 		if needed {
 			ns.dirs[f] = ns.direction(sky.Direction(f, ns.mid))
@@ -216,6 +216,14 @@ type nightBuilder struct {
 	sky    *visibility.Sky
 	cal    *Calendar
 	night  int
+	*scratch
+}
+
+// scratch is a worker's memory.
+type scratch struct {
+	cell    cell
+	windows []Window
+	dirs    [][]place // by site
 }
 
 func (b *nightBuilder) build(sites []*sitePlan) nightWindows {
@@ -224,9 +232,12 @@ func (b *nightBuilder) build(sites []*sitePlan) nightWindows {
 	out.at = append(out.at, 0)
 	skies := make([]*nightSky, len(sites))
 	for i, p := range sites {
-		skies[i] = newNightSky(p, b.sky, b.cal, b.night)
+		if len(b.dirs) <= i {
+			b.dirs = append(b.dirs, make([]place, len(b.w.sv.Fields)))
+		}
+		skies[i] = newNightSky(p, b.sky, b.cal, b.night, b.dirs[i])
 	}
-	var cl cell
+	cl, windows := &b.cell, b.windows[:0]
 	cl.epoch = float64(b.w.epoch)
 	for c := range b.w.classes {
 		site := b.w.classes[c].site
@@ -235,16 +246,18 @@ func (b *nightBuilder) build(sites []*sitePlan) nightWindows {
 			if k := c*units + u; skies[site] != nil && b.needed[k] {
 				cl.set(skies[site], &b.w.units[u], u, &cp, b.w.sv)
 				cl.windows()
-				out.windows = append(out.windows, cl.in...)
+				windows = append(windows, cl.in...)
 				if cl.odd() {
 					out.odd = append(out.odd, uint32(k))
 					out.oddWindows = append(out.oddWindows, cl.out...)
 					out.oddAt = append(out.oddAt, uint32(len(out.oddWindows)))
 				}
 			}
-			out.at = append(out.at, uint32(len(out.windows)))
+			out.at = append(out.at, uint32(len(windows)))
 		}
 	}
-	out.windows = slices.Clip(slices.Clone(out.windows))
+	b.windows = windows
+	out.windows = make([]Window, len(windows)) // no spare room is kept
+	copy(out.windows, windows)
 	return out
 }
