@@ -24,11 +24,12 @@ type Input struct {
 // Report is the outlook of a survey.
 type Report struct {
 	Telescopes []TelescopeHours // by telescope id
-	Ascension  [Bins]Balance    // by right ascension, 2 h each from 0 h
+	Ascension  [Bins]SkyBalance // by right ascension, 2 h each from 0 h
 	Months     []MonthBalance   // of the period, in order
 	Asked      float64          // h of telescope time that every demand together would take
 	Open       float64          // h open, less keep_free
 	Losses     []Loss           // what rules take away, the greatest first
+	Usable     float64          // what they leave of the same time
 	Shut       []Shut           // demands no window opens for, by field and demand
 	Short      []Short          // demands that can't get every visit, by field and demand
 	ShortField int              // fields with at least one such demand
@@ -39,6 +40,15 @@ const Bins = 12
 
 // Balance is demand against supply, h.
 type Balance struct{ Asked, Open float64 }
+
+// SkyBalance is the balance of a part of the sky. Open counts the hours with
+// that right ascension on the meridian; Seen is how long a field there can be
+// observed, summed over sites, as a mean weighted by what is asked. Hours that
+// fields of several bins can be seen in stand in each of them.
+type SkyBalance struct {
+	Balance
+	Seen float64
+}
 
 // MonthBalance is one calendar month of the period.
 type MonthBalance struct {
@@ -87,15 +97,17 @@ func Look(ctx context.Context, in Input) (*Report, error) {
 	for f := range fields {
 		r.add(sv, f, &fields[f])
 	}
-	losses, err := in.losses(ctx)
-	if err != nil {
+	for i := range r.Ascension {
+		if b := &r.Ascension[i]; b.Asked > 0 {
+			b.Seen /= b.Asked
+		}
+	}
+	var err error
+	if r.Losses, r.Usable, err = in.losses(ctx); err != nil {
 		return nil, err
 	}
-	r.Losses = losses
-	for i := range r.Shut {
-		if r.Shut[i].Limit == "" {
-			r.Shut[i].Limit = in.blocker(r.Shut[i].Field, r.Shut[i].Demand)
-		}
+	if err := in.nameLimits(ctx, r.Shut); err != nil {
+		return nil, err
 	}
 	return r, nil
 }
@@ -108,7 +120,8 @@ func (r *Report) add(sv *survey.Survey, f int, look *fieldLook) {
 	for d := range look.demands {
 		l := &look.demands[d]
 		r.Asked += l.asked
-		r.Ascension[bin].Asked += l.asked
+		b := &r.Ascension[bin]
+		b.Asked += l.asked
 		total := 0.0
 		for _, h := range l.usable {
 			total += h
@@ -122,6 +135,7 @@ func (r *Report) add(sv *survey.Survey, f int, look *fieldLook) {
 			short = true
 			continue
 		}
+		b.Seen += l.asked * total // divided by Asked at the end
 		for m, h := range l.usable {
 			r.Months[m].Asked += l.asked * h / total
 		}
