@@ -33,10 +33,6 @@ func LeavesAzimuthRange(r survey.AzimuthRange, from, to float64) bool {
 	return y < r.From-rounding || y > r.To+rounding
 }
 
-// azimuthEdge is an instant at which a field's azimuth comes within, or goes
-// out of, the guard about one end of the range.
-type azimuthEdge struct{ t float64 }
-
 // planeTimes appends the instants in x at which the direction's component
 // across the vertical plane of an azimuth (given by its sine and cosine) is g,
 // positive clockwise of it, on the plane's near half as well as on the far.
@@ -68,8 +64,6 @@ func (c *cell) alongTimes(dst []float64, sinA, cosA, g float64, x visibility.Int
 	return c.planeTimes(dst, -cosA, sinA, g, x)
 }
 
-func sortTimes(t []float64) { slices.Sort(t) }
-
 // atEnd tells how a direction lies to one end of the range: -1 or +1 when it
 // is off the guard, counter-clockwise or clockwise, 0 within it; far when it is
 // on the other half of the plane.
@@ -99,7 +93,7 @@ func (c *cell) inAzimuthRange() bool {
 				cuts = c.alongTimes(cuts, s, k, g, x)
 			}
 		}
-		sortTimes(cuts)
+		slices.Sort(cuts)
 		c.azimuthPieces(cuts)
 	}
 	return c.swap()

@@ -2,6 +2,7 @@ package constraints
 
 import (
 	"math"
+	"slices"
 
 	"nightwright/constraints/survey"
 	"nightwright/visibility"
@@ -100,9 +101,9 @@ func (c *cell) aboveMask() bool {
 		var cuts [32]float64
 		ends := append(cuts[:0], x.From, x.To)
 		for v := range m.az {
-			ends = c.vertexTimes(ends, m, v, x)
+			ends = c.planeTimes(ends, m.sin[v], m.cos[v], 0, x) // the azimuth of a vertex
 		}
-		sortTimes(ends)
+		slices.Sort(ends)
 		for i := 1; i < len(ends); i++ {
 			bad = c.underLine(bad, m, ends[i-1], ends[i])
 		}
@@ -133,12 +134,6 @@ func (c *cell) lowTime(dst []visibility.Interval, high float64) []visibility.Int
 	return dst
 }
 
-// vertexTimes appends the instants in x at which the azimuth is that of a
-// vertex.
-func (c *cell) vertexTimes(dst []float64, m *mask, v int, x visibility.Interval) []float64 {
-	return c.planeTimes(dst, m.sin[v], m.cos[v], 0, x)
-}
-
 // underLine appends the part of [from, to], within one piece of the mask, in
 // which the field may be (inner) or surely is (outer) below it.
 func (c *cell) underLine(dst []visibility.Interval, m *mask, from, to float64) []visibility.Interval {
@@ -153,13 +148,8 @@ func (c *cell) underLine(dst []visibility.Interval, m *mask, from, to float64) [
 		alt, az := c.altAz(t)
 		// The azimuth next to mid, so that the line goes on past north.
 		az = mid + math.Remainder(az-mid, 2*math.Pi)
-		return m.alongNear(k, az, mid) - alt + guard
+		return m.along(k, mid) + m.slope[k]*(az-mid) - alt + guard
 	})
-}
-
-// alongNear is along for an azimuth near mid, itself in piece k.
-func (m *mask) alongNear(k int, az, mid float64) float64 {
-	return m.along(k, mid) + m.slope[k]*(az-mid)
 }
 
 // altAz is the field's altitude and azimuth from the frozen direction.

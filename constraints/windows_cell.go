@@ -22,7 +22,6 @@ type cell struct {
 	cur, next []visibility.Interval
 	segs      []visibility.Interval
 	in, out   []Window
-	edges     []azimuthEdge
 }
 
 func (c *cell) set(ns *nightSky, u *unit, id int, cp *classPlan, sv *survey.Survey) {

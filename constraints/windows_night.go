@@ -21,12 +21,12 @@ const arcsec = math.Pi / 648000
 const (
 	directionGuard = 1 * arcsec
 	// moonGuard covers what is left in the separation once the diurnal
-	// aberration is applied, and the interpolated Moon (under 0.05").
+	// aberration is applied, and the interpolated Moon (0.001").
 	moonGuard = 0.4 * arcsec
 	// bodyGuard covers the interpolated altitude of Sun and Moon.
 	bodyGuard = 0.2 * arcsec
 	// illuminationGuard covers the interpolated lit fraction.
-	illuminationGuard = 2e-7
+	illuminationGuard = 2e-8
 	// timePad covers the root finding of twilight (1 ms) and float64 sums of
 	// Unix seconds, s.
 	timePad = 0.002
