@@ -14,7 +14,7 @@ func TestDays(t *testing.T) {
 	if d.Unix() != 1801440000 || d.String() != "2027-02-01" || d.Month() != 1 {
 		t.Errorf("%d is %s, %g s, month %d", d, d, d.Unix(), d.Month())
 	}
-	if (d-1).String() != "2027-01-31" {
+	if (d - 1).String() != "2027-01-31" {
 		t.Errorf("the day before is %s", d-1)
 	}
 	for _, bad := range []string{"", "2027-2-1", "2027-02-30", "yesterday", "2027-02-01T00:00:00Z"} {
