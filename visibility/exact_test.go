@@ -158,3 +158,34 @@ func TestProperMotion(t *testing.T) {
 		t.Errorf("a great circle eastwards bends to the equator; declination changed by %g\"", d)
 	}
 }
+
+// TestInstantShared: one instant for many places gives the bits of one call each.
+func TestInstantShared(t *testing.T) {
+	e := exactWith(0.1)
+	n := e.At(1.83e9)
+	for _, s := range []Site{{0.5, -1, 2000}, {-1.2, 3, 10}, {math.Pi / 2, 0, 0}} {
+		for _, p := range scatter(20) {
+			if a, b := n.Star(s, p), exactWith(0.1).Star(s, p, 1.83e9); a != b {
+				t.Errorf("star %v, want %v", a, b)
+			}
+		}
+		if a, b := n.Sun(s), e.Sun(s, 1.83e9); a != b {
+			t.Errorf("Sun %v, want %v", a, b)
+		}
+		if a, b := n.Moon(s), e.Moon(s, 1.83e9); a != b {
+			t.Errorf("Moon %v, want %v", a, b)
+		}
+	}
+	if c := n.Centuries(); math.Abs(c-0.2796) > 1e-3 { // 2028 minus 2000
+		t.Errorf("%g centuries", c)
+	}
+}
+
+// TestWrapTurn keeps angles in [0, 2 pi), rounding included.
+func TestWrapTurn(t *testing.T) {
+	for _, a := range []float64{0, -1e-300, -1e-17, 1e-17, 2 * math.Pi, -2 * math.Pi, 1e5, -1e5, math.Nextafter(2*math.Pi, 0)} {
+		if w := wrapTurn(a); !(w >= 0 && w < 2*math.Pi) || math.Abs(turnDiff(w, a)) > 1e-9 {
+			t.Errorf("%g wraps to %g", a, w)
+		}
+	}
+}
