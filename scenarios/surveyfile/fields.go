@@ -53,11 +53,13 @@ func (l *loader) readFields(m *mapping) {
 	}
 	defer file.file.Close()
 	list := &fieldList{l: l, file: filepath.Join(l.folder.source.Root, name), mapped: columns, hours: true}
-	open := openCSV
+	var table *rows
 	if parquet {
-		open = openParquet
+		table, err = openParquet(file)
+	} else {
+		table, err = openCSV(file)
 	}
-	if table, err := open(file); err == nil {
+	if err == nil {
 		list.read(table)
 	} else if errors.Is(err, io.EOF) {
 		list.fault(1, "the field list is empty", "want a header line and a row for each field")

@@ -108,16 +108,6 @@ func Load(path string) (*survey.Survey, *Source, []Issue) {
 	return l.sv, source, l.issues
 }
 
-// reason drops the operation and path of a file error: the message around it
-// names them.
-func reason(err error) error {
-	var p *os.PathError
-	if errors.As(err, &p) {
-		return p.Err
-	}
-	return err
-}
-
 // yamlLine finds the line in a message of the YAML library.
 var yamlLine = regexp.MustCompile(`^yaml: (?:line (\d+): )?(.*)$`)
 

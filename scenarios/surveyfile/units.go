@@ -9,6 +9,7 @@ import (
 	"time"
 
 	"nightwright/constraints/survey"
+	"nightwright/visibility/ephemeris"
 )
 
 const (
@@ -78,13 +79,15 @@ func formatDuration(s float64) string {
 const wantInstant = "want an instant in UTC such as 2027-04-02T03:00:00Z"
 
 // parseInstant reads an ISO 8601 instant with Z as UTC Unix seconds. Seconds
-// may have a fraction or be left out.
+// may have a fraction or be left out; an instant inside a leap second is that
+// of the second after.
 func parseInstant(text string) (float64, error) {
 	text = strings.TrimSpace(text)
-	for _, layout := range []string{"2006-01-02T15:04:05Z", "2006-01-02T15:04Z"} {
-		if t, err := time.Parse(layout, text); err == nil {
-			return float64(t.Unix()) + float64(t.Nanosecond())/1e9, nil
-		}
+	if t, err := time.Parse("2006-01-02T15:04Z", text); err == nil {
+		return float64(t.Unix()), nil
+	}
+	if u, err := ephemeris.ParseUTC(text); err == nil {
+		return u.Unix(), nil
 	}
 	if _, err := time.Parse(time.RFC3339, text); err == nil {
 		return 0, errors.New("is not in UTC")

@@ -39,7 +39,7 @@ func ReadSurvey(path string) (*Survey, error) {
 		return nil, &InputError{Issues: issues}
 	}
 	s := &Survey{Survey: sv, Path: path, Source: source, Warnings: issues}
-	s.Clock = ephemeris.NewClock(nil, sv.Orientation)
+	s.Clock = ephemeris.NewClock(sv.LeapSeconds, sv.Orientation)
 	s.Exact = visibility.NewExact(s.Clock)
 	return s, nil
 }
