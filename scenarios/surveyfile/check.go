@@ -73,7 +73,7 @@ func (l *loader) carriers(p, d int) []int {
 // checkDemand checks a demand against telescopes, sites and period.
 func (l *loader) checkDemand(p, d int) {
 	at := &l.marks.demands[p][d]
-	if !at.sound || !sound(l.marks.telescopes) || l.telescopes.unknown {
+	if !at.sound || !sound(l.marks.telescopes) || l.telescopes.unknown || l.filters.unknown {
 		return
 	}
 	program, demand := &l.sv.Programs[p], &l.sv.Programs[p].Demands[d]
@@ -87,7 +87,7 @@ func (l *loader) checkDemand(p, d int) {
 		l.warn(at.node, fmt.Sprintf("per_night stands without a gap min of 12h, and the sites span %.0f degrees of longitude, where one label means different hours", span),
 			"want gap: {min: 12h} or more")
 	}
-	if l.sv.Nights() < 1 {
+	if !l.marks.period {
 		return
 	}
 	nights := float64(l.sv.Nights())
@@ -175,7 +175,7 @@ func (l *loader) longitudeSpan(telescopes []int) float64 {
 // checkClosures finds closures that take nothing away, which a slip in the
 // year makes.
 func (l *loader) checkClosures() {
-	if l.sv.Nights() < 1 || l.sv.LastNight == 0 {
+	if !l.marks.period {
 		return
 	}
 	outside := func(c *survey.Closure) bool {
@@ -187,8 +187,8 @@ func (l *loader) checkClosures() {
 	}
 	warn := func(at mark, name string, closures []survey.Closure) {
 		for i := range closures {
-			if c := &closures[i]; outside(c) {
-				l.warn(at.node, fmt.Sprintf("closure %d of %s lies outside the period", i+1, name), "is its year right?")
+			if outside(&closures[i]) {
+				l.warn(at.closures[i], fmt.Sprintf("a closure of %s lies outside the period", name), "is its year right?")
 			}
 		}
 	}

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"nightwright/constraints/survey"
 	"nightwright/visibility"
@@ -15,6 +16,7 @@ type suspicion struct {
 	line       int
 	name       string
 	count      int
+	last       int // line of the last field counted
 }
 
 // suspicions keeps them in the order in which they were met.
@@ -28,11 +30,14 @@ func (s *suspicions) add(key, what, want, name string, line int) {
 		s.byKey = map[string]int{}
 	}
 	if i, ok := s.byKey[key]; ok {
-		s.all[i].count++
+		if s.all[i].last != line {
+			s.all[i].count++
+			s.all[i].last = line
+		}
 		return
 	}
 	s.byKey[key] = len(s.all)
-	s.all = append(s.all, suspicion{what, want, line, name, 1})
+	s.all = append(s.all, suspicion{what, want, line, name, 1, line})
 }
 
 // checkFields checks the fields that were read against everything else.
@@ -57,9 +62,7 @@ func (l *loader) checkFields(f *fieldList) {
 		field := &l.sv.Fields[i]
 		used[field.Program] = true
 		l.checkDates(field, int(f.lines[i]), &found)
-		for d := range l.sv.Programs[field.Program].Demands {
-			l.checkFieldDemand(field, d, carriers[field.Program][d], int(f.lines[i]), &found)
-		}
+		l.checkField(field, carriers[field.Program], int(f.lines[i]), &found)
 	}
 	for _, s := range found.all {
 		name := s.name
@@ -77,7 +80,7 @@ func (l *loader) checkFields(f *fieldList) {
 
 // checkDates finds fields whose dates leave nothing of the period.
 func (l *loader) checkDates(f *survey.Field, line int, found *suspicions) {
-	if l.sv.Nights() < 1 || l.sv.LastNight == 0 {
+	if !l.marks.period {
 		return
 	}
 	if f.NotBefore > (l.sv.LastNight+2).Unix() || f.NotAfter < (l.sv.FirstNight-1).Unix() {
@@ -85,15 +88,43 @@ func (l *loader) checkDates(f *survey.Field, line int, found *suspicions) {
 	}
 }
 
-// checkFieldDemand finds out whether anyone can ever observe a demand of a
-// field: by the lists of telescopes, by the tile, and by how high it rises.
-func (l *loader) checkFieldDemand(f *survey.Field, d int, carriers []int, line int, found *suspicions) {
-	if len(carriers) == 0 {
-		return // told already
+// verdict says why a demand of a field can never be observed; the zero value
+// is that it may be.
+type verdict struct{ what, want string }
+
+// checkField finds out whether anyone can ever observe a field: by the lists
+// of telescopes, by the tile, and by how high it rises. Carriers are those of
+// each demand of its program.
+func (l *loader) checkField(f *survey.Field, carriers [][]int, line int, found *suspicions) {
+	program := &l.sv.Programs[f.Program]
+	verdicts := make([]verdict, 0, 8)
+	same := true
+	for d := range carriers {
+		verdicts = append(verdicts, l.judge(f, d, carriers[d], line, found))
+		same = same && verdicts[d] == verdicts[0]
 	}
-	demand := l.sv.Programs[f.Program].Name + ", " + l.sv.Programs[f.Program].Demands[d].Name
-	listed, holding, rising := 0, 0, 0
-	limit := "altitude_min_deg"
+	for d, v := range verdicts {
+		who := program.Name
+		if !same {
+			who += ", " + program.Demands[d].Name
+		}
+		if v.what != "" {
+			found.add(v.what+who, strings.ReplaceAll(v.what, "WHO", strings.ReplaceAll(who, "%", "%%")), v.want, f.Name, line)
+		}
+		if same {
+			return
+		}
+	}
+}
+
+// judge is checkField for one demand.
+func (l *loader) judge(f *survey.Field, d int, carriers []int, line int, found *suspicions) verdict {
+	if len(carriers) == 0 {
+		return verdict{} // told already
+	}
+	listed, rising := 0, 0
+	var small []string
+	limit := ""
 	for _, t := range carriers {
 		tel := &l.sv.Telescopes[t]
 		if f.Telescopes != nil && !slices.Contains(f.Telescopes, t) {
@@ -101,26 +132,28 @@ func (l *loader) checkFieldDemand(f *survey.Field, d int, carriers []int, line i
 		}
 		listed++
 		if f.Tile > 0 && !tel.FieldOfView.Holds(f.Tile) {
-			found.add("tile of "+tel.Name, "the tile of %s is larger than the field of view of "+tel.Name,
-				tel.Name+" won't observe it; want a tile_deg that fits", f.Name, line)
+			small = append(small, tel.Name)
 			continue
 		}
-		holding++
-		rule := tooLow(f, &f.Rules[d], tel, l.sv.Sites[tel.Site].Latitude)
-		if rule == "" {
+		if rule := tooLow(f, &f.Rules[d], tel, l.sv.Sites[tel.Site].Latitude); rule == "" {
 			rising++
-		} else {
+		} else if limit == "" {
 			limit = rule
 		}
 	}
 	switch {
 	case listed == 0:
-		found.add("listed"+demand, "none of the telescopes of %s carries what "+demand+" wants", "want another in its telescopes column", f.Name, line)
-	case holding == 0:
-		found.add("tile"+demand, "the tile of %s is larger than every field of view that "+demand+" could use: it can't be observed", "want a tile_deg that fits", f.Name, line)
+		return verdict{"none of the telescopes of %s carries what WHO wants", "want another in its telescopes column"}
+	case len(small) == listed:
+		return verdict{"the tile of %s is larger than every field of view that WHO could use: it can't be observed", "want a tile_deg that fits"}
 	case rising == 0:
-		found.add(limit+demand, "%s never rises high enough for "+demand+": "+limit+" shuts it out at every site", "want a lower limit, or another declination", f.Name, line)
+		return verdict{"%s never rises high enough for WHO: " + limit + " shuts it out at every site", "want a lower limit, or another declination"}
 	}
+	for _, name := range small {
+		name = strings.ReplaceAll(name, "%", "%%")
+		found.add("tile of "+name, "the tile of %s is larger than the field of view of "+name, "it won't be observed there; want a tile_deg that fits, or leave it so", f.Name, line)
+	}
+	return verdict{}
 }
 
 // tooLow names the limit that a field can't meet even where it stands

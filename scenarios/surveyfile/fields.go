@@ -175,7 +175,7 @@ func (f *fieldList) read(t *rows) {
 		f.fault(t.line, "the field list has no fields", "want at least one row under the header")
 	}
 	if count > 1 && f.hours && f.told == 0 {
-		f.warn(t.line+1, "every ra_deg is below 24: are these hours?", "want degrees, or hours as 12:34:56.7")
+		f.warn(t.line+1, "every ra_deg is below 24, as if in hours", "want degrees, or hours such as 12:34:56.7")
 	}
 	f.l.checkFields(f)
 }
@@ -221,7 +221,7 @@ func (f *fieldList) place(t *rows) bool {
 			continue
 		}
 		near, slip := nearest(h, known)
-		if _, there := f.at[near]; there {
+		if _, there := f.at[near]; there || f.mapped[near] != nil {
 			slip = false
 		}
 		switch {

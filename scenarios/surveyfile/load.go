@@ -1,13 +1,9 @@
 package surveyfile
 
 import (
-	"bytes"
-	"errors"
 	"fmt"
-	"io"
 	"os"
 	"path/filepath"
-	"regexp"
 	"strconv"
 	"strings"
 
@@ -52,7 +48,7 @@ type loader struct {
 // marks remembers where the parts stood in the file, and whether each was
 // read without a fault: a check over several parts runs only on sound ones.
 type marks struct {
-	top        *yaml.Node
+	period     bool // it is there, and in order
 	sites      []mark
 	telescopes []mark
 	programs   []mark
@@ -61,8 +57,9 @@ type marks struct {
 }
 
 type mark struct {
-	node  *yaml.Node
-	sound bool
+	node     *yaml.Node
+	sound    bool
+	closures []*yaml.Node // of a site or telescope
 }
 
 type demandMark struct {
@@ -108,92 +105,12 @@ func Load(path string) (*survey.Survey, *Source, []Issue) {
 	return l.sv, source, l.issues
 }
 
-// yamlLine finds the line in a message of the YAML library.
-var yamlLine = regexp.MustCompile(`^yaml: (?:line (\d+): )?(.*)$`)
-
-// parse reads the YAML text as one document, whose top it returns.
-func (l *loader) parse(text []byte) (top *yaml.Node) {
-	text = bytes.TrimPrefix(text, []byte("\ufeff"))
-	var doc yaml.Node
-	decoder := yaml.NewDecoder(bytes.NewReader(text))
-	err := decodeYAML(decoder, &doc)
-	if err == nil {
-		var second yaml.Node
-		if err2 := decodeYAML(decoder, &second); err2 == nil {
-			l.fault(&second, "a second YAML document starts here", "want one survey a file")
-			return nil
-		} else if !errors.Is(err2, io.EOF) {
-			err = err2
-		}
-	}
-	switch {
-	case errors.Is(err, io.EOF):
-		l.fault(&doc, "the file is empty", "want the keys of a survey: "+strings.Join(keysAt(""), ", "))
-		return nil
-	case err != nil:
-		at := &yaml.Node{Line: 1}
-		message := err.Error()
-		if m := yamlLine.FindStringSubmatch(message); m != nil {
-			at.Line, _ = strconv.Atoi(m[1])
-			message = m[2]
-		}
-		l.fault(at, "it is not YAML here: "+clip(message), "want keys and values, indented by spaces, with lists in [] or after -")
-		return nil
-	}
-	top = doc.Content[0]
-	if n, loop := written(top, map[*yaml.Node]int{}); loop != nil {
-		l.fault(loop, "an alias stands inside what it stands for", "write the values out")
-		return nil
-	} else if n > maxNodes {
-		l.fault(top, "with its aliases written out the file is too large", fmt.Sprintf("want at most %d keys and values", maxNodes))
-		return nil
-	}
-	return top
-}
-
-// decodeYAML decodes a document. The library has panicked on odd bytes
-// before; a bad file must not end the program.
-func decodeYAML(d *yaml.Decoder, into *yaml.Node) (err error) {
-	defer func() {
-		if p := recover(); p != nil {
-			err = fmt.Errorf("yaml: %v", p)
-		}
-	}()
-	return d.Decode(into)
-}
-
-// written counts the nodes under n with aliases written out, up to a little
-// over maxNodes, or finds an alias inside its own anchor. A size of -1 marks
-// the nodes that are being counted.
-func written(n *yaml.Node, sizes map[*yaml.Node]int) (size int, loop *yaml.Node) {
-	if n.Kind == yaml.AliasNode {
-		if s, ok := sizes[n.Alias]; ok && s < 0 {
-			return 0, n
-		} else if ok {
-			return s, nil
-		}
-		return written(n.Alias, sizes)
-	}
-	sizes[n] = -1
-	size = 1
-	for _, c := range n.Content {
-		s, loop := written(c, sizes)
-		if loop != nil {
-			return 0, loop
-		}
-		size = min(size+s, maxNodes+1)
-	}
-	sizes[n] = size
-	return size, nil
-}
-
 // survey reads everything under the file's top.
 func (l *loader) survey(top *yaml.Node) {
-	m := l.mapping(top, "", "the survey")
+	m := l.mapping(top, "", "the file")
 	if m == nil {
 		return
 	}
-	l.marks.top = m.node
 	sv := l.sv
 	sv.Name, _ = m.name("survey")
 	l.period(m)
@@ -269,6 +186,7 @@ func (l *loader) period(m *mapping) {
 		return
 	}
 	l.sv.FirstNight, l.sv.LastNight = first, last
+	l.marks.period = last >= first
 	switch {
 	case last < first:
 		l.fault(p.at("last_night"), fmt.Sprintf("the period is reversed: last_night %s is before first_night %s", last, first), "want the earlier night first")

@@ -12,7 +12,9 @@ type names struct {
 	list         []string
 	lines        []int
 	ids          map[string]int
-	unknown      bool // the section could not be read: no name can be judged
+	// unknown says that some name is missing or doubled, or the section could
+	// not be read: a name that is not known may be meant, and isn't told.
+	unknown bool
 }
 
 // add gives the next id to a name, which may be empty after a fault. A name
@@ -22,12 +24,14 @@ func (n *names) add(r *reader, at *yaml.Node, name string) {
 	n.list = append(n.list, name)
 	n.lines = append(n.lines, at.Line)
 	if name == "" {
+		n.unknown = true
 		return
 	}
 	if n.ids == nil {
 		n.ids = map[string]int{}
 	}
 	if first, ok := n.ids[name]; ok {
+		n.unknown = true
 		r.fault(at, fmt.Sprintf("the %s %q is there twice, first on line %d", n.kind, name, n.lines[first]), "give each "+n.kind+" its own name")
 		return
 	}

@@ -1,6 +1,7 @@
 package surveyfile
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"strconv"
@@ -66,9 +67,9 @@ type mapping struct {
 	r      *reader
 	node   *yaml.Node
 	path   string
+	title  string // for messages
 	specs  []Spec
 	values map[string]*yaml.Node // by lower-case key; null values are left out
-	whole  bool                  // no key was unknown, twice there, or missing
 }
 
 // mapping reads the keys of n, and tells of unknown, doubled and missing
@@ -79,7 +80,7 @@ func (r *reader) mapping(n *yaml.Node, path, name string) *mapping {
 		r.fault(n, name+" is "+kindName(n), "want its keys: "+strings.Join(keysAt(path), ", "))
 		return nil
 	}
-	m := &mapping{r: r, node: n, path: path, specs: specsAt(path), values: map[string]*yaml.Node{}, whole: true}
+	m := &mapping{r: r, node: n, path: path, title: name, specs: specsAt(path), values: map[string]*yaml.Node{}}
 	seen := map[string]int{}
 	for i := 0; i+1 < len(n.Content); i += 2 {
 		key, value := n.Content[i], resolve(n.Content[i+1])
@@ -87,13 +88,10 @@ func (r *reader) mapping(n *yaml.Node, path, name string) *mapping {
 		spec := m.spec(word)
 		switch line, twice := seen[word]; {
 		case key.Kind != yaml.ScalarNode:
-			m.whole = false
 			r.fault(key, "a key of "+name+" is "+kindName(key), "want one of "+strings.Join(keysAt(path), ", "))
 		case twice:
-			m.whole = false
 			r.fault(key, fmt.Sprintf("the key %s is there twice, first on line %d", clip(key.Value), line), "keep one of them")
 		case spec == nil:
-			m.whole = false
 			r.fault(key, fmt.Sprintf("unknown key %q in %s", clip(key.Value), name), unknownKey(word, path))
 			seen[word] = key.Line
 		default:
@@ -105,7 +103,6 @@ func (r *reader) mapping(n *yaml.Node, path, name string) *mapping {
 	}
 	for i := range m.specs {
 		if s := &m.specs[i]; s.Need && m.values[s.Key] == nil {
-			m.whole = false
 			r.fault(n, fmt.Sprintf("%s has no %s", name, s.Key), fmt.Sprintf("want %s: %s", s.Key, s.About))
 		}
 	}
@@ -115,15 +112,15 @@ func (r *reader) mapping(n *yaml.Node, path, name string) *mapping {
 // unknownKey says what would be right instead of a key that is not known.
 func unknownKey(word, path string) string {
 	keys := keysAt(path)
-	if k, ok := nearest(word, keys); ok {
-		return fmt.Sprintf("did you mean %q?", k)
-	}
 	for _, s := range specs {
 		if s.Key == word && s.Path == "" {
 			return "it belongs at the top of the file; keys here: " + strings.Join(keys, ", ")
 		} else if s.Key == word {
 			return fmt.Sprintf("it belongs in %s; keys here: %s", s.Path, strings.Join(keys, ", "))
 		}
+	}
+	if k, ok := nearest(word, keys); ok {
+		return fmt.Sprintf("did you mean %q?", k)
 	}
 	return "known keys here: " + strings.Join(keys, ", ")
 }
@@ -143,6 +140,16 @@ func (m *mapping) spec(key string) *Spec {
 		}
 	}
 	return nil
+}
+
+// say names a key for a message. Short keys that stand in many groups get the
+// group's name before them.
+func (m *mapping) say(key string) string {
+	switch key {
+	case "min", "max", "from", "to", "at", "every", "takes", "time", "count", "file":
+		return m.title + " " + key
+	}
+	return key
 }
 
 // has reports whether the file gives the key a value.
@@ -166,7 +173,7 @@ func (m *mapping) text(key, want string) (string, bool) {
 		return spec.Default, spec.Default != "" && spec.Default != "none"
 	}
 	if n.Kind != yaml.ScalarNode {
-		m.r.fault(n, key+" is "+kindName(n), want)
+		m.r.fault(n, m.say(key)+" is "+kindName(n), want)
 		return "", false
 	}
 	if spec.Default == "none" && isNone(n.Value) {
@@ -215,11 +222,11 @@ func (m *mapping) number(key string, in span) (float64, bool) {
 	}
 	v, err := parseNumber(text)
 	if err == nil && !in.holds(v) {
-		m.r.fault(m.at(key), fmt.Sprintf("%s is %s", key, clip(text)), in.want(plain))
+		m.r.fault(m.at(key), fmt.Sprintf("%s is %s", m.say(key), clip(text)), in.want(plain))
 		return 0, false
 	}
 	if err != nil {
-		m.r.fault(m.at(key), fmt.Sprintf("%s: %q %s", key, clip(text), err), in.want(plain))
+		m.r.fault(m.at(key), fmt.Sprintf("%s: %q %s", m.say(key), clip(text), err), in.want(plain))
 		return 0, false
 	}
 	return v, true
@@ -234,11 +241,11 @@ func (m *mapping) integer(key string, low, high int) (int, bool) {
 	}
 	v, err := strconv.Atoi(strings.TrimSpace(text))
 	if err != nil {
-		m.r.fault(m.at(key), fmt.Sprintf("%s: %q is no whole number", key, clip(text)), in.want(plain))
+		m.r.fault(m.at(key), fmt.Sprintf("%s: %q is no whole number", m.say(key), clip(text)), in.want(plain))
 		return 0, false
 	}
 	if v < low || v > high {
-		m.r.fault(m.at(key), fmt.Sprintf("%s is %d", key, v), in.want(plain))
+		m.r.fault(m.at(key), fmt.Sprintf("%s is %d", m.say(key), v), in.want(plain))
 		return 0, false
 	}
 	return v, true
@@ -251,12 +258,16 @@ func (m *mapping) duration(key string, in span) (float64, bool) {
 		return 0, false
 	}
 	v, err := parseDuration(text)
+	if errors.Is(err, errNegative) {
+		m.r.fault(m.at(key), fmt.Sprintf("%s is %s", m.say(key), clip(text)), in.want(formatDuration))
+		return 0, false
+	}
 	if err != nil {
-		m.r.fault(m.at(key), fmt.Sprintf("%s: %q %s", key, clip(text), err), wantDuration)
+		m.r.fault(m.at(key), fmt.Sprintf("%s: %q %s", m.say(key), clip(text), err), wantDuration)
 		return 0, false
 	}
 	if !in.holds(v) {
-		m.r.fault(m.at(key), fmt.Sprintf("%s is %s", key, clip(text)), in.want(formatDuration))
+		m.r.fault(m.at(key), fmt.Sprintf("%s is %s", m.say(key), clip(text)), in.want(formatDuration))
 		return 0, false
 	}
 	return v, true
@@ -273,7 +284,7 @@ func (m *mapping) word(key string, words []string) (int, bool) {
 			return i, true
 		}
 	}
-	m.r.fault(m.at(key), fmt.Sprintf("%s is %q", key, clip(text)), "want one of "+strings.Join(words, ", "))
+	m.r.fault(m.at(key), fmt.Sprintf("%s is %q", m.say(key), clip(text)), "want one of "+strings.Join(words, ", "))
 	return 0, false
 }
 
@@ -284,7 +295,7 @@ func (m *mapping) name(key string) (string, bool) {
 		return "", false
 	}
 	if fix := badName(text); fix != "" {
-		m.r.fault(m.at(key), fmt.Sprintf("%s: %q is no name", key, clip(text)), fix)
+		m.r.fault(m.at(key), fmt.Sprintf("%s: %q is no name", m.say(key), clip(text)), fix)
 		return "", false
 	}
 	return text, true

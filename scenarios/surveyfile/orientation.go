@@ -33,7 +33,7 @@ func (l *loader) orientation(m *mapping) {
 		l.sv.LeapSeconds = table
 		return err
 	})
-	if table := l.sv.Orientation.Table; len(table) > 0 && l.sv.Nights() > 1 {
+	if table := l.sv.Orientation.Table; len(table) > 0 && l.marks.period {
 		first, last := mjdDay(table[0].MJD), mjdDay(table[len(table)-1].MJD)
 		if l.sv.FirstNight < first || l.sv.LastNight+1 > last {
 			l.warn(o.at("iers"), fmt.Sprintf("UT1-UTC is in the file from %s to %s, not for all nights from %s to %s", first, last, l.sv.FirstNight, l.sv.LastNight),

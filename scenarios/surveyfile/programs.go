@@ -26,7 +26,7 @@ func (l *loader) readPrograms(m *mapping) {
 			l.programs.add(&l.reader, n, "")
 		}
 		l.sv.Programs = append(l.sv.Programs, p)
-		l.marks.programs = append(l.marks.programs, mark{n, len(l.issues) == before})
+		l.marks.programs = append(l.marks.programs, mark{node: n, sound: len(l.issues) == before})
 		l.marks.demands = append(l.marks.demands, demands)
 	}
 }
@@ -63,14 +63,14 @@ func (l *loader) program(m *mapping) (survey.Program, []demandMark) {
 		named.add(&l.reader, dm.at("name"), d.Name)
 		if sequence := l.sequence(&d); sequence != "" {
 			if line, twice := sequences[sequence]; twice {
-				l.fault(dm.node, fmt.Sprintf("%s has the filters %s, which the demand on line %d of this program has too", name, sequence, line),
+				l.fault(dm.node, fmt.Sprintf("%s has the same filters (%s) as the demand on line %d of this program", name, sequence, line),
 					"want one demand with all the visits, or another order of filters")
 			} else {
 				sequences[sequence] = dm.node.Line
 			}
 		}
 		mk.rules = append(append(mk.rules, programRules...), dm.overrides()...)
-		mk.mark = mark{n, len(l.issues) == before}
+		mk.mark = mark{node: n, sound: len(l.issues) == before}
 		p.Demands = append(p.Demands, d)
 		marks = append(marks, mk)
 	}

@@ -20,20 +20,21 @@ func (l *loader) readSites(m *mapping) {
 	for i, n := range items {
 		before := len(l.issues)
 		s := survey.Site{}
+		var closures []*yaml.Node
 		if sm := l.mapping(n, "sites", label("site", i, n)); sm != nil {
-			s = l.site(sm, i)
+			s, closures = l.site(sm, i)
 			l.sites.add(&l.reader, sm.at("name"), s.Name)
 		} else {
 			l.sites.add(&l.reader, n, "")
 			l.telescopes.unknown = true
 		}
 		l.sv.Sites = append(l.sv.Sites, s)
-		l.marks.sites = append(l.marks.sites, mark{n, len(l.issues) == before})
+		l.marks.sites = append(l.marks.sites, mark{n, len(l.issues) == before, closures})
 	}
 }
 
-func (l *loader) site(m *mapping, id int) survey.Site {
-	var s survey.Site
+// site reads one site; the nodes are those of its closures.
+func (l *loader) site(m *mapping, id int) (s survey.Site, closures []*yaml.Node) {
 	s.Name, _ = m.name("name")
 	latitude, _ := m.number("latitude_deg", span{low: -90, high: 90, unit: " degrees"})
 	longitude, _ := m.number("longitude_deg", span{low: -180, high: 180, unit: " degrees, east positive"})
@@ -48,13 +49,14 @@ func (l *loader) site(m *mapping, id int) survey.Site {
 			s.Persistence, _ = w.duration("persistence", span{low: 0, high: 365 * daySeconds, openLow: true})
 		}
 	}
-	s.Closures = m.closures("closures")
+	s.Closures, closures = m.closures("closures")
 	items := m.items("telescopes", "telescope")
 	for i, n := range items {
 		before := len(l.issues)
 		t := survey.Telescope{}
+		var shut []*yaml.Node
 		if tm := l.mapping(n, "sites.telescopes", label("telescope", i, n)); tm != nil {
-			t = l.telescope(tm)
+			t, shut = l.telescope(tm)
 			l.telescopes.add(&l.reader, tm.at("name"), t.Name)
 		} else {
 			l.telescopes.add(&l.reader, n, "")
@@ -62,12 +64,12 @@ func (l *loader) site(m *mapping, id int) survey.Site {
 		t.Site = id
 		s.Telescopes = append(s.Telescopes, len(l.sv.Telescopes))
 		l.sv.Telescopes = append(l.sv.Telescopes, t)
-		l.marks.telescopes = append(l.marks.telescopes, mark{n, len(l.issues) == before})
+		l.marks.telescopes = append(l.marks.telescopes, mark{n, len(l.issues) == before, shut})
 	}
 	if len(items) == 0 {
 		l.telescopes.unknown = true
 	}
-	return s
+	return s, closures
 }
 
 // timeZone reads an IANA name. The zones come with the program.
@@ -158,8 +160,8 @@ func (m *mapping) clear(key string) []float64 {
 }
 
 // closures reads nights or times taken away, of a site or a telescope.
-func (m *mapping) closures(key string) []survey.Closure {
-	var all []survey.Closure
+// The nodes are those of the closures.
+func (m *mapping) closures(key string) (all []survey.Closure, nodes []*yaml.Node) {
 	for i, n := range m.list(key, "want a list of {from, to, why}") {
 		cm := m.r.mapping(n, m.path+".closures", fmt.Sprintf("closure %d", i+1))
 		if cm == nil {
@@ -167,9 +169,10 @@ func (m *mapping) closures(key string) []survey.Closure {
 		}
 		if c, ok := cm.closure(); ok {
 			all = append(all, c)
+			nodes = append(nodes, n)
 		}
 	}
-	return all
+	return all, nodes
 }
 
 func (m *mapping) closure() (c survey.Closure, ok bool) {
@@ -200,7 +203,7 @@ func (m *mapping) closure() (c survey.Closure, ok bool) {
 		if err != nil {
 			what := err.Error()
 			if !isDate(text) {
-				m.r.fault(m.at(key), fmt.Sprintf("%s: %q %s", key, clip(text), what), want)
+				m.r.fault(m.at(key), fmt.Sprintf("%s: %q %s", m.say(key), clip(text), what), want)
 			}
 			ok = false
 		}

@@ -12,9 +12,8 @@ import (
 // longest is the limit on overheads: nothing a telescope does takes longer.
 var longest = span{low: 0, high: daySeconds}
 
-// telescope reads one telescope.
-func (l *loader) telescope(m *mapping) survey.Telescope {
-	var t survey.Telescope
+// telescope reads one telescope; the nodes are those of its closures.
+func (l *loader) telescope(m *mapping) (t survey.Telescope, closures []*yaml.Node) {
 	t.Name, _ = m.name("name")
 	if k, ok := m.word("mount", []string{"altazimuth", "equatorial"}); ok {
 		t.Mount = survey.Altazimuth + survey.MountKind(k)
@@ -39,8 +38,8 @@ func (l *loader) telescope(m *mapping) survey.Telescope {
 	t.ExposureScale, _ = m.number("exposure_scale", span{low: 0, high: 1000, openLow: true})
 	t.Reserved = m.reserved("reserved")
 	t.KeepFree, _ = m.number("keep_free", span{low: 0, high: 1, openHigh: true})
-	t.Closures = m.closures("closures")
-	return t
+	t.Closures, closures = m.closures("closures")
+	return t, closures
 }
 
 // fieldOfView reads a diameter, or a width and a height.
@@ -144,7 +143,7 @@ func (m *mapping) reserved(key string) []survey.Reserved {
 			every, ok := b.duration("every", span{low: 0, high: daySeconds, openLow: true})
 			r.At, r.Every = survey.AtEvery, every
 			if ok && sound && every <= takes {
-				m.r.fault(b.at("takes"), fmt.Sprintf("%s takes %s every %s, the whole night", name, formatDuration(takes), formatDuration(every)), "want takes to be shorter than every")
+				m.r.fault(b.at("takes"), fmt.Sprintf("%s takes %s every %s, all of the night", name, formatDuration(takes), formatDuration(every)), "want takes to be shorter than every")
 				sound = false
 			}
 			sound = sound && ok

@@ -23,6 +23,8 @@ const (
 // wantDuration is what every message about a duration says would be right.
 const wantDuration = "want a number with its unit, such as 90s, 10m, 12h, 3d or 1h30m"
 
+var errNegative = errors.New("is negative")
+
 // parseDuration reads 90s, 10m, 12h, 3d, 0.5h, or several from the larger
 // unit to the smaller, such as 1h30m, as seconds. Plain 0 needs no unit.
 func parseDuration(text string) (float64, error) {
@@ -31,7 +33,7 @@ func parseDuration(text string) (float64, error) {
 		return 0, nil
 	}
 	if strings.HasPrefix(rest, "-") {
-		return 0, errors.New("is negative")
+		return 0, errNegative
 	}
 	var sum float64
 	last := math.Inf(1)
