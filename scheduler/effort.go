@@ -14,8 +14,8 @@ type effort struct {
 var efforts = map[string]effort{
 	"quick": {
 		levels: []dual.Level{
-			{Nights: 30, Hours: 1, Steps: 20, Sample: 8, Eta: 0.6, EtaLast: 0.1, Bin: 1200},
-			{Nights: 7, Hours: 0.5, Steps: 20, Sample: 4, Eta: 0.3, EtaLast: 0.05, Bin: 600},
+			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 8, Eta: 1, EtaLast: 0.2},
+			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 16, Sample: 2, Eta: 0.5, EtaLast: 0.1},
 		},
 		ceilingBin: 600,
 		construct:  0.8,
@@ -23,19 +23,19 @@ var efforts = map[string]effort{
 	},
 	"normal": {
 		levels: []dual.Level{
-			{Nights: 30, Hours: 1, Steps: 30, Sample: 8, Eta: 0.6, EtaLast: 0.1, Bin: 1200},
-			{Nights: 7, Hours: 0.5, Steps: 30, Sample: 4, Eta: 0.3, EtaLast: 0.05, Bin: 600},
-			{Nights: 1, Hours: 0, Steps: 20, Sample: 1, Eta: 0.1, EtaLast: 0.02, Bin: 600},
+			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 32, Sample: 8, Eta: 1, EtaLast: 0.2},
+			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 2, Eta: 0.5, EtaLast: 0.1},
+			{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: 10, Sample: 1, Eta: 0.15, EtaLast: 0.04},
 		},
 		ceilingBin: 300,
 		construct:  0.8,
-		sweeps:     []float64{0.6, 0.4, 0},
+		sweeps:     []float64{0.6, 0.3, 0},
 	},
 	"thorough": {
 		levels: []dual.Level{
-			{Nights: 30, Hours: 1, Steps: 40, Sample: 4, Eta: 0.6, EtaLast: 0.1, Bin: 1200},
-			{Nights: 7, Hours: 0.5, Steps: 40, Sample: 2, Eta: 0.3, EtaLast: 0.05, Bin: 600},
-			{Nights: 1, Hours: 0, Steps: 60, Sample: 1, Eta: 0.1, EtaLast: 0.01, Bin: 600},
+			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 40, Sample: 4, Eta: 1, EtaLast: 0.2},
+			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 40, Sample: 1, Eta: 0.5, EtaLast: 0.1},
+			{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: 40, Sample: 1, Eta: 0.2, EtaLast: 0.02},
 		},
 		ceilingBin: 150,
 		construct:  0.8,

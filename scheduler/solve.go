@@ -63,9 +63,8 @@ type conductor struct {
 }
 
 func (c *conductor) solve(seed uint64) *model.Outcome {
-	c.report(model.Progress{Phase: "peaks"})
-	peaks := dual.NewPeaks(c.p)
-	ascent := dual.NewAscent(c.p, peaks)
+	dual.Debug = Debug
+	ascent := dual.NewAscent(c.p)
 	for i, lv := range c.effort.levels {
 		phase := fmt.Sprintf("prices %d of %d", i+1, len(c.effort.levels))
 		ascent.Run(c.ctx, lv, func(step, of int, bound float64) {
@@ -75,7 +74,7 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	c.report(model.Progress{Phase: "ceiling"})
 	ceiling := ascent.Ceiling(c.effort.ceilingBin)
 	c.report(model.Progress{Phase: "ceiling", Done: 1, Total: 1, Ceiling: ceiling})
-	s := search.New(c.p, ascent.Prices(), peaks, ascent.Oracle().Mu, seed)
+	s := search.New(c.p, ascent.Prices(), ascent.Oracle().Mu, seed)
 	s.Construct(c.ctx, c.effort.construct, func(done, of int) {
 		c.report(model.Progress{Phase: "construction", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
 	})
@@ -84,6 +83,17 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 		s.Sweep(c.ctx, theta, func(done, of int) {
 			c.report(model.Progress{Phase: phase, Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
 		})
+	}
+	if Debug {
+		u := s.Use()
+		fmt.Printf("exposure %.0f h gap %.0f h idle %.0f h; ", u.Exposure/3600, u.Gap/3600, u.Idle/3600)
+		lim := 0
+		var mean float64
+		for _, pr := range ascent.Prices().List() {
+			mean += pr.PerHour
+			lim++
+		}
+		fmt.Printf("mean price per hour %.3e; coverage per open hour %.3e\n", mean/float64(lim), ceiling/((u.Exposure+u.Gap+u.Idle)/3600))
 	}
 	status := model.StepsDone
 	if err := c.ctx.Err(); err != nil {
@@ -98,3 +108,5 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 		Prices: ascent.Prices().List(), Stats: s.Stats().List(), Shares: shares(c.p, plan),
 	}
 }
+
+var Debug = false

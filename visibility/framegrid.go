@@ -10,10 +10,8 @@ type FrameGrid struct {
 	Step    float64 // s
 	Frames  []Frame
 	filters int
-	lights  []Light // [frame][filter]
-	// floors holds, for each cell and filter, the light at its left and right
-	// end as it bounds the cell from below (see UpperProfile).
-	floors []cellFloor
+	lights  []Light     // [frame][filter]
+	nodes   []nodeFloor // [frame][filter], see NodeQuality
 }
 
 // FrameGrid builds the frames from the last multiple of step at or before
@@ -33,7 +31,7 @@ func (s *Sky) FrameGrid(site int, from, to, step float64) *FrameGrid {
 			g.lights[k*g.filters+f] = s.Light(&g.Frames[k], f)
 		}
 	}
-	g.setFloors(s)
+	g.setNodes(s)
 	return g
 }
 

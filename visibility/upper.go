@@ -9,7 +9,7 @@ import (
 // An upper bound on quality between frames.
 //
 // In a cell [t0, t0+h] of a FrameGrid, replace the sky by one that is never
-// brighter: the twilight by the smaller of its values at the two ends (the
+// brighter: the twilight by the smallest of its values at the ends (the
 // Sun's altitude is monotone in a cell unless it culminates in it, and then
 // its least value is at an end or the cell's twilight is taken as zero), the
 // moonlight by none if the Moon rises or sets in the cell. What is left,
@@ -29,11 +29,12 @@ import (
 // margin of 1.2 for what lies between the samples. Near the Moon (within 13
 // deg) f(rho) is replaced by its value 3 deg further out, which is less.
 
-// cellFloor bounds a cell's light from below for one filter.
-type cellFloor struct {
-	moonLeft, moonRight float64 // Light.moon at the two ends, 0 if the Moon is not up all through
-	twilight            float64 // least of the cell
-	l1, l2              float64 // bounds on M'/M (1/s) and M''/M (1/s^2)
+// nodeFloor bounds the light of the two cells that meet in a frame from below,
+// for one filter.
+type nodeFloor struct {
+	moon     float64 // Light.moon at the frame, 0 if the Moon is not up all through both cells
+	twilight float64 // least of both cells
+	l1, l2   float64 // bounds on M'/M (1/s) and M''/M (1/s^2)
 }
 
 const (
@@ -130,23 +131,33 @@ func (ft *filterSky) row(s float64) pathRow {
 	return pathRow{a.clear + w*(b.clear-a.clear), a.dark + w*(b.dark-a.dark), a.loss + w*(b.loss-a.loss)}
 }
 
-// setFloors fills the cells' light floors.
-func (g *FrameGrid) setFloors(s *Sky) {
-	g.floors = make([]cellFloor, g.Cells()*g.filters)
-	for k := range g.Cells() {
-		a, b := &g.Frames[k], &g.Frames[k+1]
-		up := a.SinMoon > 0 && b.SinMoon > 0
+// setNodes fills the nodes' light floors.
+func (g *FrameGrid) setNodes(s *Sky) {
+	n := len(g.Frames)
+	g.nodes = make([]nodeFloor, n*g.filters)
+	for k := range n {
+		lo, hi := max(k-1, 0), min(k+1, n-1)
+		up, still := true, false
+		least := 1.0
+		for j := lo; j <= hi; j++ {
+			up = up && g.Frames[j].SinMoon > 0
+			least = math.Min(least, g.Frames[j].SinMoon)
+			if j > lo {
+				still = still || culminates(&g.Frames[j-1], &g.Frames[j])
+			}
+		}
 		for f := range g.filters {
-			la, lb := g.Light(k, f), g.Light(k+1, f)
-			fl := &g.floors[k*g.filters+f]
-			fl.twilight = math.Min(la.twilight, lb.twilight)
-			if fl.twilight > 0 && culminates(a, b) {
+			fl := &g.nodes[k*g.filters+f]
+			fl.twilight = g.Light(k, f).twilight
+			for j := lo; j <= hi; j++ {
+				fl.twilight = math.Min(fl.twilight, g.Light(j, f).twilight)
+			}
+			if still {
 				fl.twilight = 0
 			}
 			if up {
-				fl.moonLeft, fl.moonRight = la.moon, lb.moon
-				i := min(int(math.Min(a.SinMoon, b.SinMoon)*moonBins), moonBins-1)
-				m := s.filters[f].curve.moon[i]
+				fl.moon = g.Light(k, f).moon
+				m := s.filters[f].curve.moon[min(int(least*moonBins), moonBins-1)]
 				fl.l1, fl.l2 = m[0], m[1]
 			}
 		}
@@ -159,50 +170,44 @@ func culminates(a, b *Frame) bool {
 	return a.East.Dot(a.Sun)*b.East.Dot(b.Sun) <= 1e-6
 }
 
-// UpperProfile returns, for cell k and the field's direction at its two ends,
-// values left and right such that the quality at any instant t0 + x h of the
-// cell is at most left + x (right - left); both at most 1.
-func (s *Sky) UpperProfile(g *FrameGrid, k, filter int, c ephemeris.Vec) (left, right float64) {
+// NodeQuality returns, for the field's direction at frame k, its quality there
+// and a node value: the quality at any instant between frames k and k+1 is at
+// most the line between their node values (both at most 1). Each node is
+// bounded with the light floors of both its cells.
+func (s *Sky) NodeQuality(g *FrameGrid, k, filter int, c ephemeris.Vec) (q, upper float64) {
+	fr := &g.Frames[k]
+	sin := fr.SinAltitude(c)
 	ft := &s.filters[filter]
-	fl := &g.floors[k*g.filters+filter]
-	a, b := &g.Frames[k], &g.Frames[k+1]
-	sa, sb := a.SinAltitude(c), b.SinAltitude(c)
-	left = ft.boundAt(sa, fl.moonLeft, fl.twilight, a.Moon.Dot(c))
-	right = ft.boundAt(sb, fl.moonRight, fl.twilight, b.Moon.Dot(c))
-	top := math.Max(sa, sb)
-	bin := min(max(int(top*curveBins), 0), curveBins-1)
-	q := math.Max(left, right)
-	curve := ft.curve.dark[bin]
-	if fl.moonLeft > 0 || fl.moonRight > 0 {
-		curve += fl.l1*ft.curve.cross[bin] + q*(fl.l2+2*fl.l1*fl.l1)
-	}
-	// The directions move by under 1" a cell; 2e-6 covers the path table.
-	slack := curve*g.Step*g.Step/8 + 4e-6
-	return math.Min(left+slack, 1), math.Min(right+slack, 1)
-}
-
-// boundAt evaluates R with the light floors.
-func (ft *filterSky) boundAt(sin, moon, twilight, cosMoon float64) float64 {
 	if sin <= 0 {
-		return 0
+		// Quality is 0 here; the slack covers a rise within the cell.
+		return 0, math.Min(1, ft.curve.dark[0]*g.Step*g.Step/8+4e-6)
 	}
+	fl := &g.nodes[k*g.filters+filter]
 	row := ft.row(sin)
-	sky := row.dark + twilight
-	if moon > 0 {
-		sky += moon * scatterFloor(cosMoon) * row.loss
+	light := g.Light(k, filter)
+	plain, floor := row.dark+light.twilight, row.dark+fl.twilight
+	slack := ft.curve.dark[min(int(sin*curveBins), curveBins-1)]
+	if light.moon > 0 {
+		cos := fr.Moon.Dot(c)
+		f := scattering(cos)
+		plain += light.moon * f * row.loss
+		if fl.moon > 0 {
+			if cos > cosNearBound {
+				f = scatterFar
+			}
+			floor += fl.moon * f * row.loss
+		}
 	}
-	return row.clear / sky
+	q = math.Min(1, row.clear/plain)
+	upper = row.clear / floor
+	if fl.moon > 0 {
+		slack += fl.l1*ft.curve.cross[min(int(sin*curveBins), curveBins-1)] + upper*(fl.l2+2*fl.l1*fl.l1)
+	}
+	// The direction moves by under 1" a cell; 4e-6 covers that and the tables.
+	return q, math.Min(1, upper+slack*g.Step*g.Step/8+4e-6)
 }
 
 var cosNearBound = math.Cos(13 * math.Pi / 180)
 
-// scatterFloor is f(rho), or near the Moon its value at 16 deg, which is
-// below f anywhere within 13 deg and smooth.
-func scatterFloor(cos float64) float64 {
-	if cos > cosNearBound {
-		return scatterFar
-	}
-	return scattering(cos)
-}
-
+// scatterFar is f(rho) at 16 deg, below f anywhere within 13 deg and smooth.
 var scatterFar = scatterFunction(16 * math.Pi / 180)

@@ -3,6 +3,7 @@ package dual
 import (
 	"context"
 	"math"
+	"math/rand/v2"
 
 	"nightwright/scheduler/model"
 )
@@ -10,13 +11,30 @@ import (
 // Level is one stage of the price search: prices move in blocks of slots, on
 // a sample of the fields.
 type Level struct {
-	Nights  int     // nights a block spans
-	Hours   float64 // sidereal hours a block spans; 0: single slots
+	Block   Block // the smallest blocks
 	Steps   int
 	Sample  int     // every Sample-th field, changing with the step
 	Eta     float64 // first step size
 	EtaLast float64
-	Bin     float64 // start bins, s
+	Memory  float64 // part of the old direction kept each step
+}
+
+// Block says how slots are grouped.
+type Block struct {
+	Nights  int     // nights a block spans; 0: all
+	Hours   float64 // sidereal hours it spans; 0 with one night: single slots; 24: whole nights
+	Network bool    // over all telescopes
+	Gain    float64
+}
+
+// parents are the coarser groups whose excess moves every price below them
+// too. Load answers a price that rises everywhere much less than one that
+// rises in a single slot, so the coarser the group, the greater its gain.
+var parents = []Block{
+	{Nights: 0, Hours: 24, Network: true, Gain: 4},
+	{Nights: 7, Hours: 24, Network: true, Gain: 1},
+	{Nights: 1, Hours: 24, Network: true, Gain: 0.5},
+	{Nights: 1, Hours: 24, Gain: 0.5},
 }
 
 // Ascent finds prices that bring the bound down, coarse to fine.
@@ -24,9 +42,9 @@ type Ascent struct {
 	p      *model.Problem
 	prices *Prices
 	oracle *Oracle
-	peaks  *Peaks
 	scale  float64 // C per second: a typical price
 	loads  [][]float32
+	rank   []int // a shuffle of the fields, for sampling
 }
 
 // chunks is the fixed number of parts the fields are worked in; loads merge
@@ -34,9 +52,9 @@ type Ascent struct {
 const chunks = 16
 
 // NewAscent starts from zero prices.
-func NewAscent(p *model.Problem, peaks *Peaks) *Ascent {
+func NewAscent(p *model.Problem) *Ascent {
 	pr := NewPrices(p)
-	a := &Ascent{p: p, prices: pr, peaks: peaks, oracle: NewOracle(p, pr, peaks)}
+	a := &Ascent{p: p, prices: pr, oracle: NewOracle(p, pr)}
 	var value, time float64
 	for i := range p.Wants {
 		w := &p.Wants[i]
@@ -51,6 +69,7 @@ func NewAscent(p *model.Problem, peaks *Peaks) *Ascent {
 	if time > 0 {
 		a.scale = 0.2 * value / time
 	}
+	a.rank = rand.New(rand.NewPCG(1, 0)).Perm(len(p.FieldWant) - 1)
 	a.loads = make([][]float32, chunks)
 	for i := range a.loads {
 		a.loads[i] = make([]float32, len(pr.rate))
@@ -69,45 +88,48 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 	if lv.Steps == 0 || a.scale == 0 {
 		return
 	}
-	a.oracle.SetBins(lv.Bin, false)
-	block, blocks := a.blocks(lv)
-	capacity := make([]float64, blocks)
-	keep := a.keepFactor()
-	for s, c := range a.prices.capacity {
-		if c > 0 {
-			capacity[block[s]] += c * keep[s/a.prices.n]
+	a.oracle.Coarse()
+	groups := []*group{a.group(lv.Block, lv.Memory)}
+	for _, pb := range parents {
+		if pb.coarser(lv.Block) {
+			groups = append(groups, a.group(pb, 0.5*lv.Memory))
 		}
 	}
-	velocity := make([]float64, blocks)
-	load := make([]float64, blocks)
+	load := make([]float64, len(a.prices.rate))
 	for step := range lv.Steps {
 		if ctx.Err() != nil {
 			return
 		}
 		eta := lv.Eta * math.Pow(lv.EtaLast/lv.Eta, float64(step)/math.Max(1, float64(lv.Steps-1)))
 		a.oracle.Refresh()
-		a.peaks.SetPrices(a.prices)
 		bound := a.sweep(lv.Sample, step%lv.Sample)
 		clear(load)
 		for _, l := range a.loads {
 			for s, x := range l {
-				if x != 0 {
-					load[block[s]] += float64(x)
-				}
+				load[s] += float64(x) * float64(lv.Sample)
 			}
 		}
-		for b := range load {
-			if capacity[b] <= 0 {
-				continue
-			}
-			x := (load[b]*float64(lv.Sample) - capacity[b]) / capacity[b]
-			x = math.Max(-1, math.Min(1.5, x))
-			velocity[b] = 0.5*velocity[b] + 0.5*x
+		for _, g := range groups {
+			g.move(load)
 		}
 		for s, c := range a.prices.capacity {
-			if c > 0 {
-				a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.scale*velocity[block[s]])
+			if c <= 0 {
+				continue
 			}
+			d := 0.0
+			for _, g := range groups {
+				d += g.step[g.of[s]] * g.velocity[g.of[s]]
+			}
+			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.scale*d)
+		}
+		if Debug {
+			var l, c, r float64
+			for s, x := range a.prices.capacity {
+				l += load[s]
+				c += x
+				r += x * a.prices.rate[s]
+			}
+			println(step, int(l/3600), int(c/3600), "capvalue", int(1e6*r), "bound", int(1e6*(bound*float64(lv.Sample)+r)))
 		}
 		if progress != nil {
 			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue())
@@ -148,7 +170,7 @@ func (a *Ascent) sweep(sample, offset int) float64 {
 		clear(load)
 		var picks []pick
 		for f := c * fields / chunks; f < (c+1)*fields/chunks; f++ {
-			if f%sample != offset {
+			if a.rank[f]%sample != offset {
 				continue
 			}
 			for wi := a.p.FieldWant[f]; wi < a.p.FieldWant[f+1]; wi++ {
@@ -189,36 +211,111 @@ func (a *Ascent) addLoad(load []float32, wi int, picks []pick) {
 	}
 }
 
-// blocks assigns each slot to its block of the level: telescope, group of
-// nights, and sidereal hours.
-func (a *Ascent) blocks(lv Level) (block []int32, n int) {
-	pr := a.prices
-	block = make([]int32, len(pr.rate))
-	if lv.Hours == 0 && lv.Nights <= 1 {
-		for s := range block {
-			block[s] = int32(s)
+// group is the slots gathered in blocks, with each block's capacity and the
+// running mean of its relative excess demand.
+type group struct {
+	of       []int32
+	capacity []float64
+	load     []float64
+	velocity []float64
+	step     []float64 // own gain, shrinking when the excess changes sign
+	most     float64
+	memory   float64
+}
+
+// move takes the loads of a step in.
+func (g *group) move(load []float64) {
+	clear(g.load)
+	for s, x := range load {
+		if x != 0 {
+			g.load[g.of[s]] += x
 		}
-		return block, len(block)
 	}
-	perDay := int(math.Ceil(24 / lv.Hours))
-	groups := (a.p.Nights+2)/lv.Nights + 2
+	for b, c := range g.capacity {
+		if c > 0 {
+			x := math.Max(-1, math.Min(1.5, (g.load[b]-c)/c))
+			v := g.memory*g.velocity[b] + (1-g.memory)*x
+			if v*g.velocity[b] < 0 {
+				g.step[b] *= 0.6
+			} else {
+				g.step[b] = math.Min(g.step[b]*1.05, g.most)
+			}
+			g.velocity[b] = v
+		}
+	}
+}
+
+// coarser reports whether b groups more than a level's own blocks.
+func (b Block) coarser(than Block) bool {
+	size := func(x Block) float64 {
+		n := float64(x.Nights)
+		if x.Nights == 0 {
+			n = 1e4
+		}
+		if x.Network {
+			n *= 10
+		}
+		return n * math.Max(x.Hours, 0.1)
+	}
+	return size(b) > 1.5*size(than)
+}
+
+// group assigns each slot to its block: telescope, group of nights, and
+// sidereal hours.
+func (a *Ascent) group(bl Block, memory float64) *group {
+	pr := a.prices
+	g := &group{of: make([]int32, len(pr.rate)), most: bl.Gain, memory: memory}
+	n := a.assign(g.of, bl)
+	g.capacity, g.load, g.velocity = make([]float64, n), make([]float64, n), make([]float64, n)
+	g.step = make([]float64, n)
+	for i := range g.step {
+		g.step[i] = bl.Gain
+	}
+	keep := a.keepFactor()
+	for s, c := range pr.capacity {
+		if c > 0 {
+			g.capacity[g.of[s]] += c * keep[s/pr.n]
+		}
+	}
+	return g
+}
+
+// assign fills of with block numbers and returns how many there are.
+func (a *Ascent) assign(of []int32, bl Block) int {
+	pr := a.prices
+	if bl.Hours == 0 {
+		for s := range of {
+			of[s] = int32(s)
+		}
+		return len(of)
+	}
+	perDay := int(math.Ceil(24 / bl.Hours))
+	nights := bl.Nights
+	if nights == 0 {
+		nights = a.p.Nights + 4
+	}
+	groups := (a.p.Nights+2)/nights + 2
 	for t := range a.p.Scopes {
+		row := t
+		if bl.Network {
+			row = 0
+		}
 		lon := a.p.Survey.Sites[a.p.Scopes[t].Site].Longitude
 		for s := range pr.n {
 			us := (pr.first+int64(s))*pr.slot + pr.slot/2
 			local := model.Sec(us) - 43200 + lon/(2*math.Pi)*86400
 			night := int(math.Floor(local/86400)) - int(a.p.Survey.FirstNight) + 1
-			group := min(max(night/lv.Nights, 0), groups-1)
+			group := min(max(night/nights, 0), groups-1)
 			// Sidereal time to a minute or so is enough to group slots.
 			lst := math.Mod(model.Sec(us)/86164.0905+lon/(2*math.Pi), 1)
 			if lst < 0 {
 				lst++
 			}
-			h := min(int(lst*24/lv.Hours), perDay-1)
-			block[t*pr.n+s] = int32((t*groups+group)*perDay + h)
+			h := min(int(lst*24/bl.Hours), perDay-1)
+			of[t*pr.n+s] = int32((row*groups+group)*perDay + h)
 		}
 	}
-	return block, len(a.p.Scopes) * groups * perDay
+	return len(a.p.Scopes) * groups * perDay
 }
 
 // pool hands scratch memory to workers.
@@ -234,3 +331,5 @@ func newPool(workers int, make_ func() *scratch) *pool {
 
 func (p *pool) get() *scratch  { return <-p.free }
 func (p *pool) put(s *scratch) { p.free <- s }
+
+var Debug bool

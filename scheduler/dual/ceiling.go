@@ -16,9 +16,8 @@ import (
 // seconds. The result is rounded up by a relative 1e-9 and an absolute 1e-12,
 // far above the float64 error of sums of 1e6 terms below 1.
 func (a *Ascent) Ceiling(width float64) float64 {
-	a.oracle.SetBins(width, true)
+	a.oracle.Fine(width)
 	a.oracle.Refresh()
-	a.peaks.SetPrices(a.prices)
 	sum := a.sweep(1, 0) + a.capacityValue() - a.keepFreeValue() + a.bonusValue()
 	return math.Min(1, sum*(1+1e-9)+1e-12)
 }
@@ -41,7 +40,7 @@ func (a *Ascent) keepFreeValue() float64 {
 			}
 			spare := open - a.p.Budget(t, n) - a.p.Scopes[t].LeastGap
 			if spare > 0 {
-				sum += a.peaks.minRate[t*a.p.Nights+n] * model.Sec(spare)
+				sum += a.oracle.least[t*a.p.Nights+n] * model.Sec(spare)
 			}
 		}
 	}

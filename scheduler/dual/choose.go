@@ -18,20 +18,31 @@ func (o *Oracle) best(sc *scratch, wi int, picks []pick) (float64, []pick) {
 	if w.Visits == 0 || len(w.Scopes) == 0 {
 		return 0, picks
 	}
-	floor := 0.9 * o.Mu[wi]
-	o.gather(sc, wi, floor)
-	o.sortBins(sc)
-	var bound float64
-	switch {
-	case w.PerNight > 0 && w.GapMin < 12*3600*model.Micro:
-		bound, picks = o.perNight(sc, wi, w, floor, picks)
-	case w.GapMin < o.bin:
-		bound, picks = o.repeated(sc, wi, w, floor, picks)
-	default:
-		bound, picks = o.spaced(sc, wi, w, floor, picks)
+	from := len(picks)
+	best := math.Inf(1)
+	for floor := 0.9 * o.Mu[wi]; ; floor *= 0.6 {
+		if floor < 1e-3*w.Value {
+			floor = 0
+		}
+		o.gather(sc, wi, floor)
+		o.sortBins(sc)
+		var bound float64
+		picks = picks[:from]
+		switch {
+		case w.PerNight > 0 && w.GapMin < 12*3600*model.Micro:
+			bound, picks = o.perNight(sc, wi, w, floor, picks)
+		case w.GapMin < o.bin:
+			bound, picks = o.repeated(sc, wi, w, floor, picks)
+		default:
+			bound, picks = o.spaced(sc, wi, w, floor, picks)
+		}
+		o.clean(sc)
+		best = math.Min(best, bound)
+		// Fewer visits than wanted above the floor: look further down.
+		if floor == 0 || o.Mu[wi] > floor {
+			return best, picks
+		}
 	}
-	o.clean(sc)
-	return bound, picks
 }
 
 // sortBins leaves the touched bins, ascending, in sc.order.
@@ -62,9 +73,11 @@ func (o *Oracle) spaced(sc *scratch, wi int, w *model.Want, floor float64, picks
 	gap := int32(min(floorDiv(w.GapMin, o.bin), int64(o.bins)))
 	n := int(w.Visits)
 	solve := func(mu float64) (float64, int) { return sc.interval(gap, mu) }
-	mu, bound := multiplier(solve, n, floor, o.Mu[wi])
-	o.keepMu(wi, mu, floor)
-	sc.interval(gap, mu)
+	mu, full, bound := multiplier(solve, n, floor, o.Mu[wi])
+	o.Mu[wi] = mu
+	// Where worths tie, the count jumps over n at mu: trace the larger set
+	// and keep its best.
+	sc.interval(gap, full)
 	picks = o.trace(sc, n, picks)
 	return bound, picks
 }
@@ -132,13 +145,14 @@ func keepBest(picks []pick, from, n int) []pick {
 
 // multiplier finds a mu >= floor at which the programme takes about n visits
 // and returns it with the least bound n mu + f(mu) seen. The bound is valid
-// for every mu, so the search may stop anywhere.
-func multiplier(solve func(float64) (float64, int), n int, floor, guess float64) (mu, bound float64) {
+// for every mu, so the search may stop anywhere. full is a multiplier at which
+// the programme takes at least n visits, or as many as it can.
+func multiplier(solve func(float64) (float64, int), n int, floor, guess float64) (mu, full, bound float64) {
 	lo := floor
 	f, c := solve(lo)
 	mu, bound = lo, float64(n)*lo+f
 	if c <= n {
-		return mu, bound
+		return mu, mu, bound
 	}
 	flo, clo := f, c
 	// Secant on the concave best value: the tangents at lo and hi meet where
@@ -167,7 +181,8 @@ func multiplier(solve func(float64) (float64, int), n int, floor, guess float64)
 		if b := float64(n)*x + f; b < bound {
 			mu, bound = x, b
 		}
-		if c == n || (c == clo && f <= flo) {
+		if c == n {
+			lo = x
 			break
 		}
 		if c > n {
@@ -182,19 +197,7 @@ func multiplier(solve func(float64) (float64, int), n int, floor, guess float64)
 			hi, fhi, chi = x, f, c
 		}
 	}
-	return mu, bound
-}
-
-// keepMu stores the multiplier; when it sits on the floor it is lowered so
-// that the next call can see further down.
-func (o *Oracle) keepMu(wi int, mu, floor float64) {
-	if mu <= floor {
-		mu = 0.8 * floor
-		if mu < 1e-4*o.p.MaxValue*1e-3 {
-			mu = 0
-		}
-	}
-	o.Mu[wi] = mu
+	return mu, lo, bound
 }
 
 // repeated solves gaps shorter than a bin: a bin can hold several visits, as
@@ -241,7 +244,7 @@ func (o *Oracle) repeated(sc *scratch, wi int, w *model.Want, floor float64, pic
 		bound += float64(left) * floor
 		mu = floor
 	}
-	o.keepMu(wi, mu, floor)
+	o.Mu[wi] = mu
 	return bound, picks
 }
 
@@ -293,7 +296,7 @@ func (o *Oracle) perNight(sc *scratch, wi int, w *model.Want, floor float64, pic
 			}
 		}
 	}
-	o.keepMu(wi, mu, floor)
+	o.Mu[wi] = mu
 	return bound, picks
 }
 

@@ -17,7 +17,7 @@ import (
 //
 //	value * Q(s + length/2) - integral of the price over [s, s + length + least gap)
 //
-// with Q the upper profile of visibility.UpperProfile, linear between frames.
+// with Q the upper profile of visibility.BoundGrid, linear in each cell.
 // Cost and Q are linear in s between the break points of starts.go, so
 // evaluating these (and the stretch's ends) is exact for the bound Q.
 // Two visits whose starts are at least gap apart lie in bins a < b with
@@ -29,15 +29,17 @@ import (
 type Oracle struct {
 	p        *model.Problem
 	prices   *Prices
-	peaks    *Peaks
-	shapes   [][]shape // [scope]
-	shapeOf  [][]int32 // [want step kind][scope]: index into shapes[scope]
-	kinds    [][]int32 // [want][step] -> kind
-	bin      int64     // width of a start bin, us
+	least    []float64         // [scope*Nights + night] least price in open time
+	costs    [][][]coarseStart // coarse: [scope*Nights + night][shape] by slot edge
+	shapes   [][]shape         // [scope]
+	shapeOf  [][]int32         // [want step kind][scope]: index into shapes[scope]
+	kinds    [][]int32         // [want][step] -> kind
+	bin      int64             // width of a start bin, us
 	firstBin int64
 	bins     int
 	fine     bool
-	starts   [][]starts // [scope*Nights + night][shape]
+	bounds   []*visibility.BoundGrid // fine: [site*Nights + night]
+	starts   [][]starts              // [scope*Nights + night][shape]
 	// Mu is each want's count multiplier, kept between calls.
 	Mu []float64
 	// Share is the value added per second of scaled exposure, by program: the
@@ -45,9 +47,9 @@ type Oracle struct {
 	Share []float64
 }
 
-// NewOracle prepares the oracle; peaks may be nil (no pruning).
-func NewOracle(p *model.Problem, prices *Prices, peaks *Peaks) *Oracle {
-	o := &Oracle{p: p, prices: prices, peaks: peaks, Mu: make([]float64, len(p.Wants)), Share: make([]float64, len(p.Survey.Programs))}
+// NewOracle prepares the oracle.
+func NewOracle(p *model.Problem, prices *Prices) *Oracle {
+	o := &Oracle{p: p, prices: prices, Mu: make([]float64, len(p.Wants)), Share: make([]float64, len(p.Survey.Programs))}
 	o.shapes = make([][]shape, len(p.Scopes))
 	kindOf := map[float64]int32{}
 	var durations []float64
@@ -76,18 +78,45 @@ func NewOracle(p *model.Problem, prices *Prices, peaks *Peaks) *Oracle {
 	return o
 }
 
-// SetBins sets the width of the start bins, s, and whether all break points
-// are kept.
-func (o *Oracle) SetBins(width float64, fine bool) {
+// Fine makes the oracle prove: start bins of the given width in s and every
+// break point.
+func (o *Oracle) Fine(width float64) {
+	o.fine = true
+	o.setBins(width)
+	if o.bounds == nil {
+		o.bounds = make([]*visibility.BoundGrid, len(o.p.Survey.Sites)*o.p.Nights)
+		model.Parallel(o.p.Workers, len(o.bounds), func(i int) {
+			site := i / o.p.Nights
+			if g := o.p.Grid(site, i%o.p.Nights); g != nil {
+				o.bounds[i] = o.p.Sky.BoundGrid(site, g.From, g.From+g.Step*float64(g.Cells()), model.GridStep)
+			}
+		})
+	}
+	o.table()
+}
+
+// Coarse makes the oracle quick: starts on the slot edges alone and
+// qualities from the shelf. What it returns steers prices and proves nothing.
+func (o *Oracle) Coarse() {
+	o.fine = false
+	o.starts = nil
+	o.setBins(model.ShelfStep)
+}
+
+func (o *Oracle) setBins(width float64) {
 	o.bin = model.MicroOf(width)
 	o.firstBin = floorDiv(o.prices.first*o.prices.slot, o.bin)
 	o.bins = int(floorDiv((o.prices.first+int64(o.prices.n))*o.prices.slot, o.bin)-o.firstBin) + 1
-	o.table(fine)
 }
 
 // Refresh takes changed prices in.
 func (o *Oracle) Refresh() {
 	o.prices.integrate()
+	o.least = o.prices.leastRates(o.least)
+	if !o.fine {
+		o.coarseCosts()
+		return
+	}
 	model.Parallel(o.p.Workers, len(o.starts), func(i int) {
 		pn := &o.prices.nights[i]
 		for s := range o.starts[i] {
@@ -123,7 +152,7 @@ type scratch struct {
 	take    []bool
 	prev    []int32
 	windows []model.Span
-	up      []float64 // node values of the upper profile
+	up      []cellBound
 	step    [][]binBest
 }
 
@@ -146,6 +175,31 @@ func (o *Oracle) newScratch() *scratch {
 	return s
 }
 
+// keep notes the best of a bin.
+func (sc *scratch) keep(bin int32, worth float64, scope, night int32, at int64) {
+	if math.IsInf(sc.worth[bin], -1) {
+		sc.dirty = append(sc.dirty, bin)
+		sc.mark[bin/dayBlock] = true
+	}
+	sc.worth[bin], sc.scope[bin], sc.night[bin], sc.at[bin] = worth, scope, night, at
+}
+
+// limit bounds the worth of any visit of a want in a telescope-night. The
+// price is charged for the exposures' own length only: a gap may lie outside
+// the open time.
+func (o *Oracle) limit(w *model.Want, t int32, night int) float64 {
+	var sum float64
+	rate := o.least[int(t)*o.p.Nights+night]
+	for i := range w.Steps {
+		q := o.p.Shelf.Top(o.p.Scopes[t].Class, night, w.Steps[i].Row)
+		if q == 0 {
+			return math.Inf(-1)
+		}
+		sum += w.Value/float64(len(w.Steps))*q + o.stepValue(w, i, t) - rate*model.Sec(o.p.Length(&w.Steps[i], t))
+	}
+	return sum
+}
+
 // gather fills the scratch's bins with the worth of every start of the want
 // that is above floor.
 func (o *Oracle) gather(sc *scratch, wi int, floor float64) {
@@ -161,24 +215,18 @@ func (o *Oracle) gatherNight(sc *scratch, wi int, w *model.Want, t int32, n int,
 	if len(o.p.OpenOuter(int(t), n)) == 0 {
 		return
 	}
-	if o.peaks != nil {
-		limit := o.peaks.limit(o.p, w, t, n)
-		for i := range w.Steps {
-			limit += o.stepValue(w, i, t)
-		}
-		if limit <= floor {
-			return
-		}
+	if o.limit(w, t, n) <= floor {
+		return
+	}
+	if !o.fine {
+		o.coarseNight(sc, wi, w, t, n, floor)
+		return
 	}
 	if len(w.Steps) == 1 {
 		base := o.stepValue(w, 0, t)
 		o.scan(sc, wi, w, 0, t, n, base, func(s int64, bin int32, worth float64) {
 			if worth > floor && worth > sc.worth[bin] {
-				if math.IsInf(sc.worth[bin], -1) {
-					sc.dirty = append(sc.dirty, bin)
-					sc.mark[bin/dayBlock] = true
-				}
-				sc.worth[bin], sc.scope[bin], sc.night[bin], sc.at[bin] = worth, t, int32(n), s
+				sc.keep(bin, worth, t, int32(n), s)
 			}
 		})
 		return
@@ -205,10 +253,9 @@ func (o *Oracle) scan(sc *scratch, wi int, w *model.Want, step int, t int32, n i
 	sh := o.shapes[t][si]
 	st := &o.starts[int(t)*o.p.Nights+n][si]
 	pn := &o.prices.nights[int(t)*o.p.Nights+n]
-	g := o.p.Grid(int(scope.Site), n)
-	gridFrom, gridStep := model.MicroOf(g.From), model.MicroOf(g.Step)
+	g := o.bounds[int(scope.Site)*o.p.Nights+n]
 	value := w.Value / float64(len(w.Steps))
-	c := o.p.Sky.Direction(int(w.Field), g.From+g.Step*float64(len(g.Frames)/2))
+	c := o.p.Sky.Direction(int(w.Field), g.Frames[len(g.Frames)/2].T)
 	open := o.p.OpenOuter(int(t), n)
 	sc.windows = o.p.Outer(sc.windows[:0], w.Unit, scope.Class, n)
 	for _, win := range sc.windows {
@@ -217,15 +264,18 @@ func (o *Oracle) scan(sc *scratch, wi int, w *model.Want, step int, t int32, n i
 			if hi < lo {
 				continue
 			}
-			first := int((lo + sh.length/2 - gridFrom) / gridStep)
-			last := int((hi + sh.length/2 - gridFrom) / gridStep)
+			first := g.Cell(model.Sec(lo + sh.length/2))
+			last := g.Cell(model.Sec(hi + sh.length/2))
 			up := o.profile(sc, g, first, last, int(w.Steps[step].Filter), c)
 			worth := func(e *start) float64 {
 				i := int(e.cell) - first
-				q := up[i] + float64(e.frac)*(up[i+1]-up[i])
+				q := up[i].left + float64(e.frac)*(up[i].right-up[i].left)
+				if e.frac == 0 && i > 0 && up[i-1].right > q {
+					q = up[i-1].right
+				}
 				return value*q + base - e.cost
 			}
-			edge := o.startAt(pn, gridFrom, gridStep, sh, lo)
+			edge := o.startAt(pn, g, sh, lo)
 			found(lo, edge.bin, worth(&edge))
 			list := st.list[st.from[k]:st.from[k+1]]
 			for i := lowerBound(list, lo); i < len(list) && list[i].at <= hi; i++ {
@@ -237,30 +287,33 @@ func (o *Oracle) scan(sc *scratch, wi int, w *model.Want, step int, t int32, n i
 					found(e.at, e.bin-1, v)
 				}
 			}
-			edge = o.startAt(pn, gridFrom, gridStep, sh, hi)
+			edge = o.startAt(pn, g, sh, hi)
 			found(hi, edge.bin, worth(&edge))
 		}
 	}
 }
 
-// profile fills sc.up with node values such that quality in cell k of
-// first..last is at most the line between up[k-first] and up[k-first+1].
-func (o *Oracle) profile(sc *scratch, g *visibility.FrameGrid, first, last, filter int, c ephemeris.Vec) []float64 {
-	n := last - first + 2
-	if cap(sc.up) < n {
-		sc.up = make([]float64, n+64)
-	}
-	up := sc.up[:n]
-	up[0] = 0
-	for k := first; k <= last; k++ {
-		l, r := o.p.Sky.UpperProfile(g, k, filter, c)
-		i := k - first
-		if l > up[i] {
-			up[i] = l
-		}
-		up[i+1] = r
+// profile fills sc.up with the quality's bounds at the ends of cells
+// first..last.
+func (o *Oracle) profile(sc *scratch, g *visibility.BoundGrid, first, last, filter int, c ephemeris.Vec) []cellBound {
+	up := grow(sc.up, last-first+1)
+	sc.up = up
+	for k := range up {
+		up[k].left, up[k].right = g.Bound(first+k, filter, c)
 	}
 	return up
+}
+
+// cellBound is the quality's bound at the two ends of a cell.
+type cellBound struct{ left, right float64 }
+
+// grow returns a slice of length n, keeping the memory; what it holds is not
+// defined.
+func grow[T any](x []T, n int) []T {
+	if cap(x) < n {
+		return make([]T, n+n/4+16)[:n]
+	}
+	return x[:n]
 }
 
 // lowerBound returns the index of the first start at or after s.
@@ -281,7 +334,7 @@ func lowerBound(list []start, s int64) int {
 // each later step may start anywhere within its tolerance after the one
 // before.
 func (o *Oracle) gatherSet(sc *scratch, wi int, w *model.Want, t int32, n int, floor float64) {
-	base, size, ok := o.setBins(sc, wi, w, t, n)
+	base, size, ok := o.setWorth(sc, wi, w, t, n)
 	if !ok {
 		return
 	}
@@ -289,17 +342,13 @@ func (o *Oracle) gatherSet(sc *scratch, wi int, w *model.Want, t int32, n int, f
 		b := &sc.step[0][i]
 		bin := int32(base + i)
 		if b.worth > floor && b.worth > sc.worth[bin] {
-			if math.IsInf(sc.worth[bin], -1) {
-				sc.dirty = append(sc.dirty, bin)
-				sc.mark[bin/dayBlock] = true
-			}
-			sc.worth[bin], sc.scope[bin], sc.night[bin], sc.at[bin] = b.worth, t, int32(n), b.at
+			sc.keep(bin, b.worth, t, int32(n), b.at)
 		}
 	}
 }
 
-// setBins leaves in sc.step[j] the bound of steps j.. by the start bin of step j.
-func (o *Oracle) setBins(sc *scratch, wi int, w *model.Want, t int32, n int) (base, size int, ok bool) {
+// setWorth leaves in sc.step[j] the bound of steps j.. by the start bin of step j.
+func (o *Oracle) setWorth(sc *scratch, wi int, w *model.Want, t int32, n int) (base, size int, ok bool) {
 	open := o.p.OpenOuter(int(t), n)
 	base = int(floorDiv(open[0].From, o.bin) - o.firstBin)
 	size = int(floorDiv(open[len(open)-1].To, o.bin)-o.firstBin) - base + 1
@@ -326,6 +375,13 @@ func (o *Oracle) setBins(sc *scratch, wi int, w *model.Want, t int32, n int) (ba
 			return base, size, false
 		}
 	}
+	o.joinSteps(sc, w, size)
+	return base, size, true
+}
+
+// joinSteps adds to each step's bins the best that the steps after it can
+// reach from there.
+func (o *Oracle) joinSteps(sc *scratch, w *model.Want, size int) {
 	for j := len(w.Steps) - 2; j >= 0; j-- {
 		st := &w.Steps[j+1]
 		lo := int(floorDiv(st.After-st.Tolerance, o.bin))
@@ -339,5 +395,4 @@ func (o *Oracle) setBins(sc *scratch, wi int, w *model.Want, t int32, n int) (ba
 			row[i].worth += best
 		}
 	}
-	return base, size, true
 }

@@ -1,6 +1,7 @@
 package dual
 
 import (
+	"math"
 	"sort"
 
 	"nightwright/scheduler/model"
@@ -109,6 +110,29 @@ func (pr *Prices) integrate() {
 			pn.sum[k+1] = pn.sum[k] + d
 		}
 	})
+}
+
+// Least returns the least price in each telescope-night's open time, C per
+// second, by telescope and night.
+func (pr *Prices) Least() []float64 { return pr.leastRates(nil) }
+
+// leastRates returns the least price in each telescope-night's open time.
+func (pr *Prices) leastRates(out []float64) []float64 {
+	out = grow(out, len(pr.nights))
+	for i := range pr.nights {
+		pn := &pr.nights[i]
+		least := math.Inf(1)
+		for k := range pn.open {
+			if pn.open[k] {
+				least = math.Min(least, pr.rate[pn.slots[k]])
+			}
+		}
+		if math.IsInf(least, 1) {
+			least = 0
+		}
+		out[i] = least
+	}
+	return out
 }
 
 // until returns the integral of the price over open time from the night's

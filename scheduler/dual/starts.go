@@ -1,9 +1,11 @@
 package dual
 
 import (
+	"math"
 	"slices"
 
 	"nightwright/scheduler/model"
+	"nightwright/visibility"
 )
 
 // shape is what two steps must share to have the same cost and middle on a
@@ -34,10 +36,8 @@ type starts struct {
 	from []int32
 }
 
-// table builds the starts of every telescope-night and shape. With fine set
-// they are all break points; otherwise only the bin edges, for the search.
-func (o *Oracle) table(fine bool) {
-	o.fine = fine
+// table builds the starts of every telescope-night and shape.
+func (o *Oracle) table() {
 	o.starts = make([][]starts, len(o.prices.nights))
 	model.Parallel(o.p.Workers, len(o.starts), func(i int) {
 		scope, night := i/o.p.Nights, i%o.p.Nights
@@ -50,12 +50,8 @@ func (o *Oracle) table(fine bool) {
 
 func (o *Oracle) nightStarts(scope, night int, sh shape) starts {
 	var out starts
-	g := o.p.Grid(int(o.p.Scopes[scope].Site), night)
+	g := o.bounds[int(o.p.Scopes[scope].Site)*o.p.Nights+night]
 	pn := &o.prices.nights[scope*o.p.Nights+night]
-	gridFrom, gridStep := int64(0), int64(0)
-	if g != nil {
-		gridFrom, gridStep = model.MicroOf(g.From), model.MicroOf(g.Step)
-	}
 	var at []int64
 	for _, span := range o.p.OpenOuter(scope, night) {
 		out.from = append(out.from, int32(len(out.list)))
@@ -65,17 +61,17 @@ func (o *Oracle) nightStarts(scope, night int, sh shape) starts {
 		}
 		at = append(at[:0], lo, hi)
 		at = multiples(at, lo, hi, 0, o.bin)
-		if o.fine {
-			for _, k := range pn.knots {
-				at = within(at, k, lo, hi)
-				at = within(at, k-sh.busy, lo, hi)
-			}
-			at = multiples(at, lo, hi, gridFrom-sh.length/2, gridStep)
+		for _, k := range pn.knots {
+			at = within(at, k, lo, hi)
+			at = within(at, k-sh.busy, lo, hi)
+		}
+		for i := range g.Frames {
+			at = within(at, model.MicroOf(g.Frames[i].T)-sh.length/2, lo, hi)
 		}
 		slices.Sort(at)
 		at = slices.Compact(at)
 		for _, s := range at {
-			out.list = append(out.list, o.startAt(pn, gridFrom, gridStep, sh, s))
+			out.list = append(out.list, o.startAt(pn, g, sh, s))
 		}
 	}
 	out.from = append(out.from, int32(len(out.list)))
@@ -83,14 +79,19 @@ func (o *Oracle) nightStarts(scope, night int, sh shape) starts {
 }
 
 // startAt prices one start.
-func (o *Oracle) startAt(pn *priceNight, gridFrom, gridStep int64, sh shape, s int64) start {
-	mid := s + sh.length/2 - gridFrom
-	cell := mid / gridStep
+func (o *Oracle) startAt(pn *priceNight, g *visibility.BoundGrid, sh shape, s int64) start {
+	mid := model.Sec(s + sh.length/2)
+	cell := g.Cell(mid)
+	from, to := g.Frames[cell].T, g.Frames[cell+1].T
+	frac := math.Max(0, math.Min(1, (mid-from)/(to-from)))
+	if frac < 1e-6 {
+		frac = 0 // on the edge: both cells count
+	}
 	return start{
 		at:   s,
 		cost: o.prices.until(pn, s+sh.busy) - o.prices.until(pn, s),
 		cell: int32(cell),
-		frac: float32(mid-cell*gridStep) / float32(gridStep),
+		frac: float32(frac),
 		bin:  int32(floorDiv(s, o.bin) - o.firstBin),
 	}
 }

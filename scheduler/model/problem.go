@@ -20,6 +20,7 @@ type Problem struct {
 	Sky      *visibility.Sky
 	Calendar *constraints.Calendar
 	Windows  *constraints.Windows
+	Shelf    *Shelf
 	Workers  int
 
 	Wants     []Want                  // all demands of all fields that some telescope may serve
@@ -53,6 +54,7 @@ type Step struct {
 	Duration  float64 // s, before the telescope's scale
 	After     int64   // us after the start of the step before
 	Tolerance int64   // us
+	Row       int32   // in the shelf
 }
 
 // Scope is a telescope as the optimiser sees it.
@@ -100,6 +102,7 @@ func NewProblem(sv *survey.Survey, sky *visibility.Sky, cal *constraints.Calenda
 		p.addWants(f, total)
 	}
 	p.FieldWant = append(p.FieldWant, int32(len(p.Wants)))
+	p.setShelf()
 	return p, nil
 }
 
@@ -172,7 +175,7 @@ func (p *Problem) addWants(f int, total float64) {
 			PerNight: int32(dm.PerNight), Program: int32(fd.Program),
 		}
 		for _, e := range dm.Exposures {
-			w.Steps = append(w.Steps, Step{int32(e.Filter), e.Duration, MicroOf(e.After), MicroOf(e.Tolerance)})
+			w.Steps = append(w.Steps, Step{Filter: int32(e.Filter), Duration: e.Duration, After: MicroOf(e.After), Tolerance: MicroOf(e.Tolerance)})
 		}
 		for t := range sv.Telescopes {
 			if sv.Qualifies(fd, dm, t) {
@@ -228,16 +231,4 @@ func (p *Problem) Inward(w constraints.Window) (from, to int64) { return p.us(w.
 
 func (p *Problem) us(rel int32) int64 {
 	return (p.Windows.Epoch() + int64(rel)) * Micro
-}
-
-// Units returns the number of window units and the field of each.
-func (p *Problem) Units() (n int, fieldOf []int) {
-	for i := range p.Wants {
-		n = max(n, int(p.Wants[i].Unit)+1)
-	}
-	fieldOf = make([]int, n)
-	for i := range p.Wants {
-		fieldOf[p.Wants[i].Unit] = int(p.Wants[i].Field)
-	}
-	return n, fieldOf
 }

@@ -162,10 +162,11 @@ func (s *state) newVisit(want, scope, nightIndex int32) int32 {
 	return id
 }
 
-// insert puts one step of a visit near a start, inside [early, late], pushing
-// its neighbours as far as needed. It reports false, leaving the night
+// insert puts one step of a visit at a spot, inside [early, late], pushing its
+// neighbours as far as needed. It reports false, leaving the night
 // half changed for rollback to repair, when that can't be done.
-func (s *state) insert(id int32, step int, target, early, late int64) bool {
+func (s *state) insert(id int32, step int, sp spot, early, late int64) bool {
+	target := min(max(sp.start, early), late)
 	v := &s.visits[id]
 	w := &s.p.Wants[v.want]
 	index := int(v.scope)*s.p.Nights + int(v.night)
@@ -178,11 +179,7 @@ func (s *state) insert(id int32, step int, target, early, late int64) bool {
 	if !s.set(v.scope, &e, target) {
 		return false
 	}
-	i := sort.Search(len(n.list), func(k int) bool { return n.list[k].start > target })
-	// A neighbour that began a little earlier may still belong behind.
-	if i > 0 && n.list[i-1].end() > target+e.length/2 && n.list[i-1].start > target-n.list[i-1].length/2 {
-		i--
-	}
+	i := n.behind(sp.after, sp.step, target)
 	n.list = append(n.list, entry{})
 	copy(n.list[i+1:], n.list[i:])
 	n.list[i] = e
@@ -194,6 +191,20 @@ func (s *state) insert(id int32, step int, target, early, late int64) bool {
 	}
 	s.sync(n)
 	return true
+}
+
+// behind returns the index after a given exposure, or by time when that is
+// not there any more.
+func (n *night) behind(visit int32, step int16, target int64) int {
+	if visit < 0 {
+		return 0
+	}
+	for i := range n.list {
+		if n.list[i].visit == visit && n.list[i].step == step {
+			return i + 1
+		}
+	}
+	return sort.Search(len(n.list), func(k int) bool { return n.list[k].start > target })
 }
 
 func (s *state) overBudget(scope, nightIndex int32, n *night) bool {

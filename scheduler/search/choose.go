@@ -31,33 +31,7 @@ func (c *chooser) choose(w *model.Want, spots []spot, n int, out []int) (picked 
 	if n <= 0 || len(spots) == 0 {
 		return out, 0
 	}
-	_, k := c.solve(w, spots, 0)
-	if k > n {
-		lo, hi := 0.0, 0.0
-		for i := range spots {
-			hi = math.Max(hi, spots[i].profit)
-		}
-		// The count falls with the multiplier; close in on n from above.
-		for range 40 {
-			mu = (lo + hi) / 2
-			_, k = c.solve(w, spots, mu)
-			if k == n {
-				break
-			}
-			if k > n {
-				lo = mu
-			} else {
-				hi = mu
-			}
-			if hi-lo <= 1e-9*hi {
-				break
-			}
-		}
-		if k != n { // ties: take the larger set and leave the worst out
-			mu = lo
-			c.solve(w, spots, lo)
-		}
-	}
+	mu = c.multiplier(w, spots, n)
 	from := len(out)
 	for i := len(spots); i > 0; {
 		if !c.take[i] {
@@ -73,6 +47,50 @@ func (c *chooser) choose(w *model.Want, spots []spot, n int, out []int) (picked 
 	return picked, mu
 }
 
+// cadenceEase is added to a gap where visits are chosen, us, so that each can
+// still be shifted by half of it.
+const cadenceEase = 20 * model.Micro
+
+// multiplier solves with the least count multiplier at which about n visits
+// are taken, by the secant of the convex value, and leaves that solution (n
+// or a few more visits) in place.
+func (c *chooser) multiplier(w *model.Want, spots []spot, n int) float64 {
+	lo := 0.0
+	flo, klo := c.solve(w, spots, lo)
+	if klo <= n {
+		return 0
+	}
+	hi := 0.0
+	for i := range spots {
+		hi = math.Max(hi, spots[i].profit)
+	}
+	fhi, khi := 0.0, 0
+	for range 30 {
+		x := (flo + float64(klo)*lo - fhi - float64(khi)*hi) / float64(klo-khi)
+		if !(x > lo && x < hi) {
+			break
+		}
+		f, k := c.solve(w, spots, x)
+		if k == n {
+			return x
+		}
+		if k > n {
+			if k == klo {
+				lo, flo = x, f
+				break
+			}
+			lo, flo, klo = x, f, k
+		} else {
+			if k == khi {
+				break
+			}
+			hi, fhi, khi = x, f, k
+		}
+	}
+	c.solve(w, spots, lo)
+	return lo
+}
+
 // solve is the weighted interval programme for one multiplier.
 func (c *chooser) solve(w *model.Want, spots []spot, mu float64) (float64, int) {
 	m := len(spots)
@@ -80,8 +98,12 @@ func (c *chooser) solve(w *model.Want, spots []spot, mu float64) (float64, int) 
 	c.take, c.prev = grow(c.take, m+1), grow(c.prev, m+1)
 	c.f[0], c.cnt[0] = 0, 0
 	p := 0
+	gap := w.GapMin
+	if gap > 0 {
+		gap += cadenceEase
+	}
 	for i := range spots {
-		for p < i && spots[i].start-spots[p].start >= w.GapMin {
+		for p < i && spots[i].start-spots[p].start >= gap {
 			p++
 		}
 		if w.GapMin == 0 {

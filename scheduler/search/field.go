@@ -26,9 +26,9 @@ type combo struct{ spots []spot }
 // startBin is the width of the bins in which the finder keeps one spot, s.
 const startBin = 200
 
-func newPlacer(s *state, peaks peaker, mu []float64) *placer {
+func newPlacer(s *state, mu []float64) *placer {
 	pl := &placer{s: s, mu: slices.Clone(mu)}
-	pl.find = finder{s: s, peaks: peaks, bin: startBin * model.Micro}
+	pl.find = finder{s: s, bin: startBin * model.Micro}
 	return pl
 }
 
@@ -168,13 +168,13 @@ func (pl *placer) gatherSet(w *model.Want, t int32, n int, least float64) {
 	total := 0.0
 	value := w.Value / float64(k)
 	for i := range w.Steps {
-		total += value * pl.find.peaks.Top(class, n, w.Steps[i].Filter, w.Unit)
+		total += value * pl.s.p.Shelf.Top(class, n, w.Steps[i].Row)
 	}
 	if total <= least {
 		return
 	}
 	for i := range w.Steps {
-		own := value * pl.find.peaks.Top(class, n, w.Steps[i].Filter, w.Unit)
+		own := value * pl.s.p.Shelf.Top(class, n, w.Steps[i].Row)
 		pl.find.spots = pl.find.spots[:0]
 		pl.find.find(w, i, t, n, least-(total-own))
 		pl.steps[i] = append(pl.steps[i][:0], pl.find.spots...)
@@ -201,7 +201,7 @@ func (pl *placer) chain(w *model.Want, first spot) ([]spot, float64, bool) {
 		best := -1
 		for i := range pl.steps[j] {
 			d := pl.steps[j][i].start - at - st.After
-			if d < -st.Tolerance || d > st.Tolerance {
+			if d < -st.Tolerance/2 || d > st.Tolerance/2 {
 				continue
 			}
 			if best < 0 || pl.steps[j][i].profit > pl.steps[j][best].profit {
@@ -247,24 +247,37 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 		return false
 	}
 	mark := s.mark(sp.scope, sp.night)
-	for _, part := range parts {
-		if part.eject >= 0 && s.visits[part.eject].alive {
-			if s.visits[part.eject].want == int32(wi) {
-				s.undoTo(mark)
-				return false
-			}
-			s.remove(part.eject)
-			s.stats.Ejected++
+	if sp.eject >= 0 {
+		if !s.visits[sp.eject].alive || s.visits[sp.eject].want == int32(wi) {
+			return false
 		}
+		s.remove(sp.eject)
+		s.stats.Ejected++
 	}
 	id := s.newVisit(int32(wi), sp.scope, sp.night)
 	for j, part := range parts {
-		early, late, ok := s.shiftWindow(w, j, part, parts, lo, hi)
-		if !ok || !s.insert(id, j, min(max(part.start, early), late), early, late) {
+		if j > 0 {
+			// The first steps moved what is around: look again.
+			if part, ok := pl.nextStep(w, wi, j, parts[j-1]); ok {
+				parts[j] = part
+			} else {
+				s.undoTo(mark)
+				s.stats.Refused++
+				return false
+			}
+			part = parts[j]
+			if part.eject >= 0 {
+				s.remove(part.eject)
+				s.stats.Ejected++
+			}
+		}
+		early, late, ok := s.shiftWindow(w, j, part, len(parts) > 1, lo, hi)
+		if !ok || !s.insert(id, j, part, early, late) {
 			s.undoTo(mark)
 			s.stats.Refused++
 			return false
 		}
+		parts[j].start = (early + late) / 2
 	}
 	s.stats.Inserted++
 	return true
@@ -272,25 +285,52 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 
 // shiftWindow bounds the start of a step: the legal window it was found in,
 // the cadence slack, and half of what the set's tolerances leave.
-func (s *state) shiftWindow(w *model.Want, j int, part spot, parts []spot, lo, hi int64) (early, late int64, ok bool) {
+func (s *state) shiftWindow(w *model.Want, j int, part spot, set bool, lo, hi int64) (early, late int64, ok bool) {
 	length := s.p.Length(&w.Steps[j], part.scope)
 	early, late, ok = s.legalStarts(w, part.scope, int(part.night), part.start, length)
 	if !ok {
 		return 0, 0, false
 	}
-	if len(parts) > 1 {
-		slack := int64(math.MaxInt64)
-		if j > 0 {
-			d := part.start - parts[j-1].start - w.Steps[j].After
-			slack = min(slack, w.Steps[j].Tolerance-d, w.Steps[j].Tolerance+d)
-		}
-		if j+1 < len(parts) {
-			d := parts[j+1].start - part.start - w.Steps[j+1].After
-			slack = min(slack, w.Steps[j+1].Tolerance-d, w.Steps[j+1].Tolerance+d)
-		}
-		lo, hi = max(lo, -slack/2), min(hi, slack/2)
+	if set {
+		// Each step may move by a quarter of the least tolerance, and is put
+		// within half of it, so that no shifts together break one.
+		quarter := s.quarter(w)
+		lo, hi = max(lo, -quarter), min(hi, quarter)
 	}
 	return max(early, part.start+lo), min(late, part.start+hi), true
+}
+
+// quarter returns a quarter of the least tolerance of a set, us.
+func (s *state) quarter(w *model.Want) int64 {
+	least := int64(math.MaxInt64)
+	for j := 1; j < len(w.Steps); j++ {
+		least = min(least, w.Steps[j].Tolerance)
+	}
+	return least / 4
+}
+
+// nextStep finds where step j of a set goes, given where the middle of the
+// step before's shift window is, and not by ejecting the set itself.
+func (pl *placer) nextStep(w *model.Want, wi, j int, before spot) (spot, bool) {
+	st := &w.Steps[j]
+	f := &pl.find
+	f.spots = f.spots[:0]
+	f.only = Range{before.start + st.After - st.Tolerance/2, before.start + st.After + st.Tolerance/2}
+	f.find(w, j, before.scope, int(before.night), math.Inf(-1))
+	f.only = Range{}
+	best := -1
+	for i := range f.spots {
+		if e := f.spots[i].eject; e >= 0 && pl.s.visits[e].want == int32(wi) {
+			continue
+		}
+		if best < 0 || f.spots[i].profit > f.spots[best].profit {
+			best = i
+		}
+	}
+	if best < 0 {
+		return spot{}, false
+	}
+	return f.spots[best], true
 }
 
 // legalStarts returns the starts around t at which an exposure lies in one

@@ -19,15 +19,17 @@ type spot struct {
 	night  int32
 	eject  int32 // visit that makes room, or -1
 	combo  int32 // of sets: the steps' spots
+	after  int32 // visit whose exposure comes before, or -1
+	step   int16 // that exposure's step
 }
 
 // finder lists the spots of one step of a want: one state read, nothing
 // changed. Each worker has its own.
 type finder struct {
 	s      *state
-	peaks  peaker
-	bin    int64 // width of the start bins, us
-	top    []float64
+	bin    int64   // width of the start bins, us
+	row    []uint8 // quality along the night, from the shelf
+	first  int64   // instant of row[0], us
 	poses  []mount.Pointing
 	known  []bool
 	spots  []spot
@@ -44,12 +46,18 @@ type finder struct {
 	lg     int64
 	probe  entry
 	budget int64
+	only   Range // when not zero, starts are looked for inside it alone
 }
 
-// peaker bounds a unit's quality in a night; the dual's peaks do.
-type peaker interface {
-	Top(class int32, night int, filter, unit int32) float64
-}
+// Range is a stretch of starts [From, To], us.
+type Range struct{ From, To int64 }
+
+// ease is kept between an estimated start and the limits of its position, us:
+// gaps are estimated from frames, and change a little as neighbours are pushed.
+const ease = 2 * model.Micro
+
+// shelfUS is the shelf's step, us.
+const shelfUS = model.ShelfStep * model.Micro
 
 // find appends to f.spots the best spot of each bin of one telescope-night
 // for a step of a want, in order of time, as far as it is worth more than
@@ -65,13 +73,21 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	f.w, f.step, f.scope, f.night, f.least = w, step, scope, int32(nightIndex), least
 	f.value = w.Value / float64(len(w.Steps))
 	st := &w.Steps[step]
-	if f.value*f.peaks.Top(s.p.Scopes[scope].Class, nightIndex, st.Filter, w.Unit) <= least {
+	class := s.p.Scopes[scope].Class
+	f.length = s.p.Length(st, scope)
+	limit := f.value * s.p.Shelf.Top(class, nightIndex, st.Row)
+	if s.theta > 0 {
+		limit -= s.theta * s.least[int(scope)*s.p.Nights+nightIndex] * model.Sec(f.length)
+	}
+	if limit <= least {
 		return from
 	}
+	var first int32
+	first, f.row = s.p.Shelf.Row(class, nightIndex, st.Row)
+	f.first = int64(first) * shelfUS
 	f.n = &s.nights[int(scope)*s.p.Nights+nightIndex]
 	f.g = s.p.Grid(int(s.p.Scopes[scope].Site), nightIndex)
 	f.c = s.p.Sky.Direction(int(w.Field), f.g.From+f.g.Step*float64(len(f.g.Frames)/2))
-	f.length = s.p.Length(st, scope)
 	f.lg = s.p.Scopes[scope].LeastGap
 	f.budget = math.MaxInt64
 	if s.p.Scopes[scope].KeepFree > 0 {
@@ -80,12 +96,15 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	f.probe = entry{length: f.length, filter: int16(st.Filter)}
 	f.known = grow(f.known, len(f.g.Frames))
 	clear(f.known)
-	f.top = grow(f.top, len(f.g.Frames))
 	f.poses = grow(f.poses, len(f.g.Frames))
 	for _, win := range windows {
 		wf, wt := s.p.Inward(win)
 		for _, o := range open {
-			if lo, hi := max(wf, o.From), min(wt, o.To)-f.length; hi >= lo {
+			lo, hi := max(wf, o.From), min(wt, o.To)-f.length-ease
+			if f.only.To != 0 {
+				lo, hi = max(lo, f.only.From), min(hi, f.only.To)
+			}
+			if hi >= lo {
 				f.stretch(lo, hi)
 			}
 		}
@@ -93,24 +112,26 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	return from
 }
 
-// know computes quality and pointing at a frame once.
+// know computes the pointing at a frame once.
 func (f *finder) know(k int) {
-	if f.known[k] {
-		return
+	if !f.known[k] {
+		f.known[k] = true
+		f.poses[k] = f.s.sight(f.scope, &f.g.Frames[k], f.c)
 	}
-	f.known[k] = true
-	fr := &f.g.Frames[k]
-	f.top[k] = f.s.p.Sky.LitQuality(fr, int(f.w.Steps[f.step].Filter), f.g.Light(k, int(f.w.Steps[f.step].Filter)), f.c)
-	f.poses[k] = f.s.sight(f.scope, fr, f.c)
 }
 
-// quality estimates q of an exposure that starts at s, from the frames.
+// quality estimates q of an exposure that starts at s, from the shelf.
 func (f *finder) quality(s int64) float64 {
-	x := (model.Sec(s+f.length/2) - f.g.From) / f.g.Step
-	k := min(max(int(x), 0), len(f.g.Frames)-2)
-	f.know(k)
-	f.know(k + 1)
-	return f.top[k] + (x-float64(k))*(f.top[k+1]-f.top[k])
+	x := s + f.length/2 - f.first
+	if x < 0 {
+		x = 0
+	}
+	k := int(x / shelfUS)
+	if k >= len(f.row)-1 {
+		return float64(f.row[len(f.row)-1]) / 255
+	}
+	u := float64(x-int64(k)*shelfUS) / shelfUS
+	return (float64(f.row[k]) + u*(float64(f.row[k+1])-float64(f.row[k]))) / 255
 }
 
 // aim estimates the pointing at an instant, from the frames.
@@ -222,13 +243,13 @@ func (f *finder) weigh(p, next int, from, to, seed, free int64, lost float64, ej
 	left, right := int64(math.MinInt64/4), int64(math.MaxInt64/4)
 	if p > 0 {
 		before = f.s.gapBetween(f.scope, &list[p-1], &f.probe)
-		from = max(from, n.first[p-1]+list[p-1].length+before)
+		from = max(from, n.first[p-1]+list[p-1].length+before+ease)
 		left = list[p-1].end() + before
 		used += before
 	}
 	if next < m {
 		after = f.s.gapBetween(f.scope, &f.probe, &list[next])
-		to = min(to, n.last[next]-after-f.length)
+		to = min(to, n.last[next]-after-f.length-ease)
 		right = list[next].start - after - f.length
 		used += after - n.gap[next]
 	}
@@ -279,14 +300,18 @@ func (f *finder) note(s int64, p, next int, left, right, used int64, lost float6
 	if profit <= f.least {
 		return
 	}
+	after, step := int32(-1), int16(0)
+	if p > 0 {
+		after, step = f.n.list[p-1].visit, f.n.list[p-1].step
+	}
 	if k := len(f.spots) - 1; k >= 0 {
 		last := &f.spots[k]
 		if last.scope == f.scope && last.night == f.night && last.start/f.bin == s/f.bin {
 			if profit > last.profit {
-				*last = spot{s, profit, f.scope, f.night, eject, 0}
+				*last = spot{start: s, profit: profit, scope: f.scope, night: f.night, eject: eject, after: after, step: step}
 			}
 			return
 		}
 	}
-	f.spots = append(f.spots, spot{s, profit, f.scope, f.night, eject, 0})
+	f.spots = append(f.spots, spot{start: s, profit: profit, scope: f.scope, night: f.night, eject: eject, after: after, step: step})
 }

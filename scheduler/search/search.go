@@ -22,9 +22,9 @@ type Search struct {
 
 // New starts from an empty plan. mu are the wants' count multipliers of the
 // relaxation: what each want's last visit is worth.
-func New(p *model.Problem, price pricer, peaks peaker, mu []float64, seed uint64) *Search {
+func New(p *model.Problem, price pricer, mu []float64, seed uint64) *Search {
 	s := newState(p, price)
-	return &Search{p: p, s: s, pl: newPlacer(s, peaks, mu), rg: rand.New(rand.NewPCG(seed, 1))}
+	return &Search{p: p, s: s, pl: newPlacer(s, mu), rg: rand.New(rand.NewPCG(seed, 1))}
 }
 
 // Coverage returns the plan's coverage by the search's own count.
@@ -127,4 +127,26 @@ func (x *Search) Plan() *model.Plan {
 		}
 	}
 	return &model.Plan{Exposures: out}
+}
+
+// Use sums up how the open time is spent, s.
+type Use struct{ Exposure, Gap, Idle float64 }
+
+// Use returns how the plan spends the telescopes' open time.
+func (x *Search) Use() Use {
+	var u Use
+	for i := range x.s.nights {
+		n := &x.s.nights[i]
+		var open, exposure int64
+		for _, o := range x.p.Open(i/x.p.Nights, i%x.p.Nights) {
+			open += o.To - o.From
+		}
+		for k := range n.list {
+			exposure += n.list[k].length
+		}
+		u.Exposure += model.Sec(exposure)
+		u.Gap += model.Sec(n.used - exposure)
+		u.Idle += model.Sec(open - n.used)
+	}
+	return u
 }

@@ -73,17 +73,19 @@ type state struct {
 	wanted []int32   // [field]
 	stats  Stats
 	undo   journal
-	spare  []entry // the marked night's list
-	priced float64 // sum of the nights' priced time, C
+	spare  []entry   // the marked night's list
+	least  []float64 // least price in each telescope-night's open time, C per second
+	priced float64   // sum of the nights' priced time, C
 }
 
 // pricer gives the price of time; the dual's prices do.
 type pricer interface {
 	At(scope int, us int64) float64 // C per second
+	Least() []float64               // least of each telescope-night's open time
 }
 
 func newState(p *model.Problem, price pricer) *state {
-	s := &state{p: p, price: price}
+	s := &state{p: p, price: price, least: price.Least()}
 	s.nights = make([]night, len(p.Scopes)*p.Nights)
 	s.of = make([][]int32, len(p.Wants))
 	n := len(p.Survey.Fields)

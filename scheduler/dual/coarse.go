@@ -1,0 +1,144 @@
+package dual
+
+import (
+	"math"
+
+	"nightwright/scheduler/model"
+)
+
+// The coarse oracle: the first open start of each ShelfStep slot, qualities
+// from the shelf, costs tabulated per telescope-night and shape. It runs some
+// hundred times while prices are looked for.
+
+const shelfUS = model.ShelfStep * model.Micro
+
+// coarseCosts tabulates the cost of a start on each slot edge.
+func (o *Oracle) coarseCosts() {
+	if len(o.costs) != len(o.prices.nights) {
+		o.costs = make([][][]coarseStart, len(o.prices.nights))
+	}
+	model.Parallel(o.p.Workers, len(o.costs), func(i int) {
+		open := o.p.Open(i/o.p.Nights, i%o.p.Nights)
+		if len(open) == 0 {
+			return
+		}
+		pn := &o.prices.nights[i]
+		shapes := o.shapes[i/o.p.Nights]
+		base, n := coarseSpan(open)
+		if o.costs[i] == nil {
+			o.costs[i] = make([][]coarseStart, len(shapes))
+			for s := range shapes {
+				o.costs[i][s] = make([]coarseStart, n)
+			}
+		}
+		for s, sh := range shapes {
+			row := o.costs[i][s]
+			for k := range row {
+				row[k] = o.slotStart(pn, open, (base+int64(k))*shelfUS, sh)
+			}
+		}
+	})
+}
+
+// coarseSpan returns the first slot edge number and the count that cover the
+// open time.
+func coarseSpan(open []model.Span) (base int64, n int) {
+	base = floorDiv(open[0].From, shelfUS)
+	return base, int(floorDiv(open[len(open)-1].To, shelfUS)-base) + 1
+}
+
+// slotStart is the cheapest of a slot's starts that the coarse oracle knows:
+// the first at which an exposure lies in one open interval, and the last of an
+// open interval, so that the ends of open time are used (and priced) too.
+func (o *Oracle) slotStart(pn *priceNight, open []model.Span, edge int64, sh shape) coarseStart {
+	best := coarseStart{cost: math.Inf(1)}
+	for _, s := range open {
+		for _, at := range [2]int64{max(edge, s.From), s.To - sh.length} {
+			if at < edge || at >= edge+shelfUS || at < s.From || at+sh.length > s.To {
+				continue
+			}
+			if c := o.prices.until(pn, at+sh.busy) - o.prices.until(pn, at); c < best.cost {
+				best = coarseStart{c, at}
+			}
+		}
+	}
+	return best
+}
+
+// coarseStart is the start that stands for a slot.
+type coarseStart struct {
+	cost float64 // +Inf when there is none
+	at   int64
+}
+
+// coarseNight gathers the starts of one telescope-night.
+func (o *Oracle) coarseNight(sc *scratch, wi int, w *model.Want, t int32, n int, floor float64) {
+	open := o.p.Open(int(t), n)
+	if len(open) == 0 {
+		return
+	}
+	base, size := coarseSpan(open)
+	bin0 := int32(base - o.firstBin)
+	if len(w.Steps) == 1 {
+		add := o.stepValue(w, 0, t)
+		o.coarseScan(wi, w, 0, t, n, func(k int, at int64, worth float64) {
+			worth += add
+			if b := bin0 + int32(k); worth > floor && worth > sc.worth[b] {
+				sc.keep(b, worth, t, int32(n), at)
+			}
+		})
+		return
+	}
+	for len(sc.step) < len(w.Steps) {
+		sc.step = append(sc.step, nil)
+	}
+	for j := range w.Steps {
+		row := grow(sc.step[j], size)
+		sc.step[j] = row
+		for i := range row {
+			row[i].worth = math.Inf(-1)
+		}
+		add := o.stepValue(w, j, t)
+		o.coarseScan(wi, w, j, t, n, func(k int, at int64, worth float64) {
+			row[k] = binBest{worth + add, at}
+		})
+	}
+	o.joinSteps(sc, w, size)
+	for k := range size {
+		b := &sc.step[0][k]
+		if i := bin0 + int32(k); b.worth > floor && b.worth > sc.worth[i] {
+			sc.keep(i, b.worth, t, int32(n), b.at)
+		}
+	}
+}
+
+// coarseScan calls found for every slot edge at which a step may start, with
+// its worth.
+func (o *Oracle) coarseScan(wi int, w *model.Want, step int, t int32, n int, found func(k int, at int64, worth float64)) {
+	scope := &o.p.Scopes[t]
+	st := &w.Steps[step]
+	first, q := o.p.Shelf.Row(scope.Class, n, st.Row)
+	if len(q) == 0 {
+		return
+	}
+	si := o.shapeOf[o.kinds[wi][step]][t]
+	sh := o.shapes[t][si]
+	costs := o.costs[int(t)*o.p.Nights+n][si]
+	base, _ := coarseSpan(o.p.Open(int(t), n))
+	value := w.Value / float64(len(w.Steps)) / 255
+	shift := int(sh.length / 2 / shelfUS)
+	b := float64(sh.length/2-int64(shift)*shelfUS) / shelfUS
+	a := 1 - b
+	for _, win := range o.p.Windows.Of(int(w.Unit), int(scope.Class), n) {
+		wf, wt := o.p.Inward(win)
+		k0 := max(int(-floorDiv(-wf, shelfUS)-base), 0)
+		k1 := min(int(floorDiv(wt-sh.length, shelfUS)-base), len(costs)-1)
+		// Byte of the middle's slot for start k.
+		at := int(base) + shift - int(first)
+		for k := max(k0, -at); k <= k1 && k+at+1 < len(q); k++ {
+			if c := &costs[k]; !math.IsInf(c.cost, 1) {
+				found(k, c.at, value*(a*float64(q[k+at])+b*float64(q[k+at+1]))-c.cost)
+			}
+		}
+	}
+}
