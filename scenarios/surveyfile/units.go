@@ -103,19 +103,22 @@ func isDate(text string) bool {
 	return err == nil
 }
 
-// parseNumber reads a finite decimal number.
+// parseNumber reads a finite decimal number, as 12, -0.5 or 1e-3.
 func parseNumber(text string) (float64, error) {
 	text = strings.TrimSpace(text)
-	v, err := strconv.ParseFloat(text, 64)
-	if err != nil && !errors.Is(err, strconv.ErrRange) {
-		switch strings.ToLower(text) {
-		case ".nan", ".inf", "-.inf", "+.inf": // YAML's own spelling
-			return 0, errors.New("is not finite")
-		}
+	switch strings.TrimLeft(strings.ToLower(text), "+-.") {
+	case "nan", "inf", "infinity": // also YAML's own spelling, with a point
+		return 0, errors.New("is not finite")
+	}
+	if strings.Trim(text, "0123456789+-.eE") != "" { // no hexadecimal, no _
 		return 0, errors.New("is no number")
 	}
-	if math.IsNaN(v) || math.IsInf(v, 0) {
+	v, err := strconv.ParseFloat(text, 64)
+	if errors.Is(err, strconv.ErrRange) {
 		return 0, errors.New("is not finite")
+	}
+	if err != nil {
+		return 0, errors.New("is no number")
 	}
 	return v, nil
 }

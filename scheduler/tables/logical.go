@@ -3,7 +3,7 @@ package tables
 import (
 	"errors"
 	"fmt"
-	"math"
+	"math/big"
 	"strconv"
 	"time"
 
@@ -57,23 +57,20 @@ func instantOf(n, unit int64) string {
 // text, so that 12.34 comes out as the float64 nearest to 12.34.
 func decimalReader(scale int32) cellReader {
 	return cellReader{number: func(v parquet.Value) float64 {
-		var n int64
+		var n big.Int
 		switch v.Kind() {
 		case parquet.Int32:
-			n = int64(v.Int32())
+			n.SetInt64(int64(v.Int32()))
 		case parquet.Int64:
-			n = v.Int64()
-		default:
+			n.SetInt64(v.Int64())
+		default: // big-endian two's complement of any length
 			b := v.ByteArray()
-			if len(b) == 0 || len(b) > 8 {
-				return math.NaN()
-			}
-			n = int64(int8(b[0]))
-			for _, c := range b[1:] {
-				n = n<<8 | int64(c)
+			n.SetBytes(b)
+			if len(b) > 0 && b[0] >= 0x80 {
+				n.Sub(&n, new(big.Int).Lsh(big.NewInt(1), 8*uint(len(b))))
 			}
 		}
-		x, _ := strconv.ParseFloat(fmt.Sprintf("%de%d", n, -scale), 64)
+		x, _ := strconv.ParseFloat(fmt.Sprintf("%de%d", &n, -scale), 64)
 		return x
 	}}
 }
