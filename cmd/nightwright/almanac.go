@@ -33,13 +33,13 @@ Sunset is the Sun's centre at -50', moonset the Moon's upper limb at -34'
 		return show(a, tables.Almanac, rows, f)
 	})
 	a.tableFlags(c, &f)
-	c.Flags().StringArrayVar(&sites, "site", nil, "this site only; may be repeated")
+	c.Flags().StringArrayVar(&sites, "site", nil, "only the site `NAME`; may be repeated")
 	return c
 }
 
 // tableFlags adds the flags of a command that writes a table.
 func (a *app) tableFlags(c *cobra.Command, f *tableFlags) {
-	c.Flags().StringVar(&f.out, "out", "", "write to this file, as Parquet, or as CSV when it ends in .csv")
+	c.Flags().StringVar(&f.out, "out", "", "write to this `FILE`, as Parquet, or as CSV when it ends in .csv")
 	c.Flags().BoolVar(&f.asCSV, "csv", false, "write CSV")
 }
 

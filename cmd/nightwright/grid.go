@@ -15,9 +15,9 @@ func (a *app) gridCommand() *cobra.Command {
 	var step time.Duration
 	c := a.command("grid SURVEY", 0, &cobra.Command{
 		Short: "the time-slot grid: where each field stands, and what blocks it",
-		Long: `Writes a row per site, field and time slot: altitude and azimuth (airless), airmass,
-Sun, Moon, sky brightness, whether the field can be observed from the site at
-that instant by any of its demands, and if not, the rules that block it.
+		Long: `Writes a row per site, field and time slot: altitude and azimuth (airless),
+airmass, Sun, Moon, sky brightness, whether the field can be observed from the
+site at that instant by any of its demands, and if not, the rules that block it.
 
 Values are those at the slot's start. Without --night or --from and --to it is
 every slot from noon to noon of every night; a grid of more than 5,000,000 rows
@@ -39,13 +39,13 @@ is refused.`,
 	})
 	a.tableFlags(c, &f)
 	flags := c.Flags()
-	flags.StringArrayVar(&ask.Sites, "site", nil, "this site only; may be repeated")
-	flags.StringArrayVar(&ask.Fields, "field", nil, "this field only; may be repeated")
-	flags.StringArrayVar(&ask.Nights, "night", nil, "this night (YYYY-MM-DD) only; may be repeated")
-	flags.StringVar(&ask.From, "from", "", "first instant, UTC, such as 2027-03-05T00:00:00Z")
-	flags.StringVar(&ask.To, "to", "", "instant to stop before, UTC")
+	flags.StringArrayVar(&ask.Sites, "site", nil, "only the site `NAME`; may be repeated")
+	flags.StringArrayVar(&ask.Fields, "field", nil, "only the field `NAME`; may be repeated")
+	flags.StringArrayVar(&ask.Nights, "night", nil, "only the night `YYYY-MM-DD`; may be repeated")
+	flags.StringVar(&ask.From, "from", "", "first `INSTANT`, UTC, such as 2027-03-05T00:00:00Z")
+	flags.StringVar(&ask.To, "to", "", "stop before this `INSTANT`, UTC")
 	flags.DurationVar(&step, "step", 0, "time between rows, such as 10m (default: the survey's slot)")
 	flags.Lookup("step").DefValue = "0s"
-	flags.StringVar(&ask.Filter, "filter", "", "filter of the sky brightness (default: the survey's first)")
+	flags.StringVar(&ask.Filter, "filter", "", "the sky's brightness in the filter `NAME` (default: the survey's first)")
 	return c
 }

@@ -35,8 +35,8 @@ its field list. DIR must be new or empty.
 		p.line("  nightwright check %s", quote(r.Folder))
 		return p.flush()
 	})
-	c.Flags().StringVar(&like, "like", "demo", "which starter: "+work.LikeNames())
-	c.Flags().Float64Var(&demand, "demand", 0, "time the visits take, as a multiple of the open time (default: the starter's own)")
+	c.Flags().StringVar(&like, "like", "demo", "which starter, `KIND`: "+work.LikeNames())
+	c.Flags().Float64Var(&demand, "demand", 0, "time the visits take, `X` times the open time (default: the starter's own)")
 	c.Flags().Lookup("demand").DefValue = "0"
 	return c
 }

@@ -5,6 +5,8 @@ import (
 	"io"
 	"os"
 	"sync"
+	"sync/atomic"
+	"time"
 
 	"github.com/vbauerster/mpb/v8"
 	"github.com/vbauerster/mpb/v8/decor"
@@ -12,25 +14,35 @@ import (
 	"nightwright/scheduler/model"
 )
 
-// reporter shows how far a job is: bars on a terminal, a few plain lines
-// elsewhere, nothing with --quiet. It may be called from several goroutines.
+// reporter shows how far a job is: bars on a terminal, a line a
+// phase and now and then elsewhere, nothing with --quiet. It may be called from several goroutines.
 type reporter struct {
 	mu    sync.Mutex
 	out   io.Writer // nil: silent
 	bars  *mpb.Progress
 	bar   *mpb.Bar
 	phase string
-	shown int // quarters of the phase told so far
-	last  model.Progress
+	told  time.Time        // when the last plain line was written
+	now   func() time.Time // the clock
+	// last is read by the bars while they are drawn: a lock that report holds
+	// while it waits for them would never open.
+	last atomic.Pointer[model.Progress]
 }
+
+// plainEvery is the least time between two lines of one phase.
+const plainEvery = 10 * time.Second
+
+// barWidth leaves room for a phase's name and what was reached, on a terminal
+// of 80 columns.
+const barWidth = 18
 
 func (a *app) startProgress() {
 	if a.quiet {
 		return
 	}
-	a.progress.out = a.stderr
+	a.progress.out, a.progress.now = a.stderr, time.Now
 	if isTerminal(a.stderr) {
-		a.progress.bars = mpb.New(mpb.WithOutput(a.stderr), mpb.WithWidth(40))
+		a.progress.bars = mpb.New(mpb.WithOutput(a.stderr))
 	}
 }
 
@@ -59,21 +71,19 @@ func (r *reporter) report(p model.Progress) {
 		return
 	}
 	fresh := p.Phase != r.phase
-	r.phase, r.last = p.Phase, p
+	r.phase = p.Phase
+	r.last.Store(&p)
 	if r.bars != nil {
 		r.draw(p, fresh)
 		return
 	}
-	if fresh {
-		r.shown = 0
+	switch {
+	case fresh:
 		fmt.Fprintf(r.out, "%s ...\n", p.Phase)
-	}
-	if p.Total <= 0 {
-		return
-	}
-	if quarter := 4 * p.Done / p.Total; quarter > r.shown && quarter < 4 {
-		r.shown = quarter
-		fmt.Fprintf(r.out, "%s %d %%%s\n", p.Phase, 25*quarter, standing(p))
+		r.told = r.now()
+	case p.Total > 0 && p.Done < p.Total && r.now().Sub(r.told) >= plainEvery:
+		fmt.Fprintf(r.out, "%s %d %%%s\n", p.Phase, 100*p.Done/p.Total, standing(p))
+		r.told = r.now()
 	}
 }
 
@@ -82,12 +92,10 @@ func (r *reporter) draw(p model.Progress, fresh bool) {
 		if r.bar != nil {
 			r.bar.SetTotal(-1, true)
 		}
-		r.bar = r.bars.AddBar(int64(p.Total),
-			mpb.PrependDecorators(decor.Name(fmt.Sprintf("%-22s", p.Phase))),
+		r.bar = r.bars.AddBar(int64(p.Total), mpb.BarWidth(barWidth),
+			mpb.PrependDecorators(decor.Name(fmt.Sprintf("%-18s", p.Phase))),
 			mpb.AppendDecorators(decor.Percentage(decor.WC{W: 5}), decor.Any(func(decor.Statistics) string {
-				r.mu.Lock()
-				defer r.mu.Unlock()
-				return standing(r.last)
+				return standing(*r.last.Load())
 			})))
 	}
 	r.bar.SetTotal(int64(p.Total), false)

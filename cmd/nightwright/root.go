@@ -57,9 +57,9 @@ func (a *app) root() *cobra.Command {
 	flags := root.PersistentFlags()
 	flags.BoolVar(&a.asJSON, "json", false, "write the result as JSON on stdout")
 	flags.BoolVar(&a.quiet, "quiet", false, "no progress and no notes on stderr")
-	flags.IntVar(&a.workers, "workers", runtime.GOMAXPROCS(0), "threads to use; the result doesn't depend on it")
+	flags.IntVar(&a.workers, "workers", runtime.GOMAXPROCS(0), "use `N` threads; the result doesn't depend on it")
 	flags.Lookup("workers").DefValue = "all cores"
-	flags.StringVar(&a.settingsFile, "settings", "", "settings file (default nightwright.yaml here, else the one in the user's configuration folder)")
+	flags.StringVar(&a.settingsFile, "settings", "", "settings `FILE` (default nightwright.yaml here, else the one in the user's configuration folder)")
 	root.PersistentPreRunE = func(cmd *cobra.Command, _ []string) error {
 		if err := a.applySettings(cmd); err != nil {
 			return err
@@ -71,7 +71,8 @@ func (a *app) root() *cobra.Command {
 		return nil
 	}
 	for _, c := range []*cobra.Command{
-		a.newCommand(), a.checkCommand(), a.almanacCommand(), a.gridCommand(),
+		a.demoCommand(), a.newCommand(), a.checkCommand(), a.almanacCommand(), a.gridCommand(),
+		a.planCommand(), a.auditCommand(), a.sheetCommand(), a.exportCommand(),
 	} {
 		root.AddCommand(c)
 	}
@@ -100,7 +101,6 @@ func (a *app) unknownCommand(cmd *cobra.Command, args []string) error {
 // optional says how many of the last may be missing.
 func (a *app) command(use string, optional int, c *cobra.Command, run func(cmd *cobra.Command, args []string) error) *cobra.Command {
 	c.Use = use
-	c.DisableFlagsInUseLine = true
 	words := strings.Fields(use)
 	want := 0
 	for _, w := range words[1:] {

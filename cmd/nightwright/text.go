@@ -60,7 +60,12 @@ func newList(titles ...string) *list { return &list{titles: titles} }
 
 func (l *list) add(cells ...string) { l.rows = append(l.rows, cells) }
 
-func (p *printer) table(l *list) {
+// bare is a table without its head.
+func (p *printer) bare(l *list) { p.render(l, false) }
+
+func (p *printer) table(l *list) { p.render(l, true) }
+
+func (p *printer) render(l *list, titled bool) {
 	w := table.NewWriter()
 	style := table.StyleDefault
 	style.Options = table.Options{SeparateColumns: true}
@@ -77,7 +82,9 @@ func (p *printer) table(l *list) {
 		head = append(head, t)
 		configs = append(configs, table.ColumnConfig{Number: i + 1, Align: align, AlignHeader: align})
 	}
-	w.AppendHeader(head)
+	if titled {
+		w.AppendHeader(head)
+	}
 	w.SetColumnConfigs(configs)
 	for _, r := range l.rows {
 		row := make(table.Row, len(r))

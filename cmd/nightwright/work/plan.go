@@ -1,0 +1,151 @@
+package work
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"path/filepath"
+	"time"
+
+	"nightwright/scheduler"
+	"nightwright/scheduler/audit"
+	"nightwright/scheduler/model"
+	"nightwright/scheduler/tables"
+)
+
+// PlanAsk says how to plan.
+type PlanAsk struct {
+	Out       string        // the plan folder; "": plan in the survey folder
+	Effort    string        // quick, normal or thorough
+	Seed      *uint64       // nil: the survey's
+	TimeLimit time.Duration // 0: none; a plan that was cut short says so and can't be repeated
+}
+
+// PlanResult is a plan that passed its audit and was written.
+type PlanResult struct {
+	Folder string
+	Tables *tables.PlanTables
+	Audit  *audit.Report
+}
+
+// Efforts lists the efforts, least first.
+func Efforts() []string { return []string{"quick", "normal", "thorough"} }
+
+// BreachError says that a fresh plan failed its audit: a fault of the program,
+// never of the survey. Nothing was written.
+type BreachError struct{ Report *audit.Report }
+
+// Error tells the first breach and how many there are.
+func (e *BreachError) Error() string {
+	n := len(e.Report.Breaches)
+	return fmt.Sprintf("the plan failed its audit with %d breaches and was not written; this is a fault of the program, please report it with the survey; the first: %s", n, e.Report.Breaches[0].What)
+}
+
+// Folder says where the plan goes.
+func (ask *PlanAsk) folder(s *Survey) string {
+	if ask.Out != "" {
+		return ask.Out
+	}
+	return filepath.Join(s.Folder(), "plan")
+}
+
+// Plan optimises a survey, audits the plan afresh and writes its folder. A
+// context that ends, a failed audit or a full disk leaves what stood there.
+func Plan(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*PlanResult, error) {
+	dir := ask.folder(s)
+	if err := plannable(dir); err != nil {
+		return nil, err
+	}
+	if err := s.OpenWindows(ctx, o); err != nil {
+		return nil, err
+	}
+	outcome, err := solve(ctx, s, ask, o)
+	if err != nil {
+		return nil, err
+	}
+	o.tell("recount", 0, 1)
+	pt, err := tables.Build(ctx, s.Survey, s.Exact, s.Calendar, s.Windows, outcome, o.Workers)
+	if err != nil {
+		return nil, err
+	}
+	pt.Summary.Program = o.Version
+	report, err := Audit(ctx, s, pt, o)
+	if err != nil {
+		return nil, err
+	}
+	if len(report.Breaches) > 0 {
+		return nil, &BreachError{report}
+	}
+	files, err := s.files()
+	if err != nil {
+		return nil, err
+	}
+	if err := ctx.Err(); err != nil { // the last moment to turn back
+		return nil, err
+	}
+	if err := tables.WriteFolder(dir, pt, files); err != nil {
+		return nil, err
+	}
+	return &PlanResult{dir, pt, report}, nil
+}
+
+// solve runs the optimiser. Only the caller's context, not the time limit,
+// makes it fail.
+func solve(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*model.Outcome, error) {
+	limited, cancel := ctx, context.CancelFunc(func() {})
+	if ask.TimeLimit > 0 {
+		limited, cancel = context.WithTimeout(ctx, ask.TimeLimit)
+	}
+	defer cancel()
+	seed := s.Seed
+	if ask.Seed != nil {
+		seed = *ask.Seed
+	}
+	out, err := scheduler.Solve(limited, scheduler.Input{
+		Survey: s.Survey, Sky: s.Sky, Calendar: s.Calendar, Windows: s.Windows, Workers: o.Workers,
+	}, scheduler.Params{Effort: ask.Effort, Seed: seed, Progress: o.Progress})
+	if err := ctx.Err(); err != nil {
+		return nil, err
+	}
+	return out, err
+}
+
+// plannable errs when a folder can't take a plan, before hours are spent.
+func plannable(dir string) error {
+	info, err := os.Stat(dir)
+	if errors.Is(err, os.ErrNotExist) {
+		parent := filepath.Dir(dir)
+		if info, err := os.Stat(parent); err != nil || !info.IsDir() {
+			return Inputf("the plan can't go to %s: there is no folder %s; make it first", dir, parent)
+		}
+		return nil
+	}
+	if err != nil {
+		return err
+	}
+	if !info.IsDir() {
+		return Inputf("the plan can't go to %s: it is a file; want a folder name", dir)
+	}
+	entries, err := os.ReadDir(dir)
+	if err != nil {
+		return err
+	}
+	if _, err := os.Stat(filepath.Join(dir, "plan.json")); err != nil && len(entries) > 0 {
+		return Inputf("the plan can't go to %s: the folder holds something else; want a new name or a plan folder to replace", dir)
+	}
+	return nil
+}
+
+// files reads the survey's files for the copy in the plan folder.
+func (s *Survey) files() ([]tables.SurveyFile, error) {
+	var out []tables.SurveyFile
+	for _, f := range s.Source.Files {
+		data, err := s.file(f)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, tables.SurveyFile{Name: f.Name, Data: data})
+	}
+	return out, nil
+}

@@ -1,0 +1,135 @@
+package work
+
+import (
+	"context"
+	"errors"
+	"os"
+	"path/filepath"
+	"testing"
+
+	"nightwright/scheduler/model"
+	"nightwright/scheduler/tables"
+)
+
+// TestPlanEndedAtAnyPhase ends the context at the start of each phase in turn:
+// there is no plan folder then, nor anything else that wasn't there.
+func TestPlanEndedAtAnyPhase(t *testing.T) {
+	var phases []string
+	dir := t.TempDir()
+	whole := filepath.Join(dir, "whole")
+	_, err := Plan(t.Context(), small(t), PlanAsk{Out: whole, Effort: "quick"}, Options{Workers: 1, Progress: func(p model.Progress) {
+		if len(phases) == 0 || phases[len(phases)-1] != p.Phase {
+			phases = append(phases, p.Phase)
+		}
+	}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(phases) < 6 {
+		t.Fatalf("phases %q; want several", phases)
+	}
+	for i, stop := range phases {
+		out := filepath.Join(dir, "cut", stop)
+		if err := os.MkdirAll(filepath.Dir(out), 0o755); err != nil {
+			t.Fatal(err)
+		}
+		ctx, cancel := context.WithCancel(t.Context())
+		seen := -1
+		last := ""
+		_, err := Plan(ctx, small(t), PlanAsk{Out: out, Effort: "quick"}, Options{Workers: 1, Progress: func(p model.Progress) {
+			if p.Phase != last {
+				last = p.Phase
+				if seen++; seen == i {
+					cancel()
+				}
+			}
+		}})
+		cancel()
+		if !errors.Is(err, context.Canceled) {
+			t.Errorf("ended at %q: %v; want context.Canceled", stop, err)
+		}
+		if left, _ := filepath.Glob(filepath.Join(dir, "cut", "*")); len(left) > 0 {
+			t.Errorf("ended at %q it left %q", stop, left)
+		}
+	}
+}
+
+// TestPlanIsTheSameForAnyWorkers compares plan folders byte by byte.
+func TestPlanIsTheSameForAnyWorkers(t *testing.T) {
+	dir := t.TempDir()
+	var first map[string]string
+	for _, workers := range []int{1, 2, 8} {
+		out := filepath.Join(dir, "plan")
+		if _, err := Plan(t.Context(), small(t), PlanAsk{Out: out, Effort: "normal"}, Options{Workers: workers}); err != nil {
+			t.Fatal(err)
+		}
+		got := map[string]string{}
+		err := filepath.WalkDir(out, func(p string, d os.DirEntry, err error) error {
+			if err != nil || d.IsDir() {
+				return err
+			}
+			data, err := os.ReadFile(p)
+			got[p] = string(data)
+			return err
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if first == nil {
+			first = got
+		}
+		if len(got) != len(first) {
+			t.Errorf("%d workers: %d files; want %d", workers, len(got), len(first))
+		}
+		for name, data := range first {
+			if got[name] != data {
+				t.Errorf("%d workers: %s differs from that of one", workers, filepath.Base(name))
+			}
+		}
+	}
+}
+
+// TestSeedOfTheCallerCounts: the survey's seed unless another is given.
+func TestSeedOfTheCallerCounts(t *testing.T) {
+	seed := uint64(41)
+	for want, ask := range map[uint64]PlanAsk{3: {}, seed: {Seed: &seed}} {
+		ask.Out, ask.Effort = filepath.Join(t.TempDir(), "plan"), "quick"
+		r, err := Plan(t.Context(), small(t), ask, Options{Workers: 2, Version: "v9"})
+		if err != nil {
+			t.Fatal(err)
+		}
+		pt, err := tables.ReadFolder(r.Folder)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if pt.Summary.Seed != want || pt.Summary.Program != "v9" || pt.Summary.Effort != "quick" {
+			t.Errorf("plan.json has seed %d, program %q, effort %q; want %d, v9, quick", pt.Summary.Seed, pt.Summary.Program, pt.Summary.Effort, want)
+		}
+	}
+}
+
+// TestSurveyChangedWhilePlanning: the copy in the plan folder is what was planned.
+func TestSurveyChangedWhilePlanning(t *testing.T) {
+	dir := filepath.Join(t.TempDir(), "s")
+	if err := os.CopyFS(dir, os.DirFS(filepath.Join("..", "testdata", "small"))); err != nil {
+		t.Fatal(err)
+	}
+	s, err := ReadSurvey(dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	fields, err := os.ReadFile(filepath.Join(dir, "fields.csv"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := os.WriteFile(filepath.Join(dir, "fields.csv"), append(fields, "A9,150,20,wide\n"...), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	var fault *InputError
+	if _, err := Plan(t.Context(), s, PlanAsk{Effort: "quick"}, Options{Workers: 2}); !errors.As(err, &fault) {
+		t.Fatalf("%v; want an InputError that names the file", err)
+	}
+	if _, err := os.Stat(filepath.Join(dir, "plan")); !errors.Is(err, os.ErrNotExist) {
+		t.Error("a plan was written for a survey that had changed")
+	}
+}
