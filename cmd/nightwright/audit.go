@@ -137,8 +137,7 @@ func (p *printer) audited(r *audit.Report, all bool) {
 	}
 	p.line("")
 	for i := range r.Breaches[:shown] {
-		b := &r.Breaches[i]
-		p.line("  %s", b.What)
+		p.line("  %s", work.BreachLine(&r.Breaches[i]))
 	}
 	if n := len(r.Breaches) - shown; n > 0 {
 		p.line("  and %s more: --all, --csv or --json tell them", thousands(n))

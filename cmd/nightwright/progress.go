@@ -21,6 +21,7 @@ type reporter struct {
 	out   io.Writer // nil: silent
 	bars  *mpb.Progress
 	bar   *mpb.Bar
+	total int64 // of the bar
 	phase string
 	told  time.Time        // when the last plain line was written
 	now   func() time.Time // the clock
@@ -56,9 +57,7 @@ func (r *reporter) end() {
 	if r.bars == nil {
 		return
 	}
-	if r.bar != nil {
-		r.bar.SetTotal(-1, true)
-	}
+	r.fill()
 	r.bars.Wait()
 	r.bars, r.bar, r.out = nil, nil, nil
 }
@@ -89,17 +88,23 @@ func (r *reporter) report(p model.Progress) {
 
 func (r *reporter) draw(p model.Progress, fresh bool) {
 	if fresh {
-		if r.bar != nil {
-			r.bar.SetTotal(-1, true)
-		}
+		r.fill()
 		r.bar = r.bars.AddBar(int64(p.Total), mpb.BarWidth(barWidth),
 			mpb.PrependDecorators(decor.Name(fmt.Sprintf("%-18s", p.Phase))),
 			mpb.AppendDecorators(decor.Percentage(decor.WC{W: 5}), decor.Any(func(decor.Statistics) string {
 				return standing(*r.last.Load())
 			})))
 	}
-	r.bar.SetTotal(int64(p.Total), false)
+	r.total = int64(p.Total)
+	r.bar.SetTotal(r.total, false)
 	r.bar.SetCurrent(int64(p.Done))
+}
+
+// fill completes the bar of a phase that is over.
+func (r *reporter) fill() {
+	if r.bar != nil {
+		r.bar.SetTotal(max(1, r.total), true)
+	}
 }
 
 // standing writes what the search has so far.

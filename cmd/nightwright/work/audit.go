@@ -2,6 +2,8 @@ package work
 
 import (
 	"context"
+	"strconv"
+	"strings"
 
 	"nightwright/scheduler/audit"
 	"nightwright/scheduler/tables"
@@ -59,4 +61,21 @@ func totals(pt *tables.PlanTables) *audit.Totals {
 		})
 	}
 	return t
+}
+
+// BreachLine tells one breach in one line: where, and what is wrong.
+func BreachLine(b *audit.Breach) string {
+	var where []string
+	for _, part := range []string{b.Night, b.Telescope, b.Field} {
+		if part != "" {
+			where = append(where, part)
+		}
+	}
+	if b.Visit != 0 {
+		where = append(where, "visit "+strconv.FormatInt(b.Visit, 10))
+	}
+	if len(where) == 0 {
+		return b.Rule + ": " + b.What
+	}
+	return strings.Join(where, " ") + ", " + b.Rule + ": " + b.What
 }

@@ -39,7 +39,7 @@ type BreachError struct{ Report *audit.Report }
 // Error tells the first breach and how many there are.
 func (e *BreachError) Error() string {
 	n := len(e.Report.Breaches)
-	return fmt.Sprintf("the plan failed its audit with %d breaches and was not written; this is a fault of the program, please report it with the survey; the first: %s", n, e.Report.Breaches[0].What)
+	return fmt.Sprintf("the plan failed its audit with %d breaches and was not written; this is a fault of the program, please report it with the survey; the first: %s", n, BreachLine(&e.Report.Breaches[0]))
 }
 
 // Folder says where the plan goes.
