@@ -28,7 +28,7 @@ type kind struct {
 }
 
 var kinds = []kind{
-	{"demo", demoText, 1.05, demoFields},
+	{"demo", demoText, 1, demoFields},
 	{"season", seasonText, 1.5, seasonFields},
 }
 

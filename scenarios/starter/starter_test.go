@@ -9,8 +9,11 @@ import (
 	"strings"
 	"testing"
 
+	"nightwright/constraints"
 	"nightwright/constraints/survey"
 	"nightwright/scenarios/surveyfile"
+	"nightwright/visibility"
+	"nightwright/visibility/ephemeris"
 )
 
 // load writes a starter and reads it back.
@@ -163,4 +166,34 @@ func TestOpenHoursAtTheEquinox(t *testing.T) {
 	if got := openHours(80*degree, -18*degree, 171+8*365+2); got != 0 {
 		t.Errorf("%g dark hours at 80 north at midsummer; want 0", got)
 	}
+}
+
+// The supply that demand is measured by is a plain formula; the calendar of
+// the exact sky, with every transit and block, must agree with it.
+func TestSupplyIsWhatTheCalendarHas(t *testing.T) {
+	season := load(t, "season", 1.5)
+	got, want := SeasonSupply()/3600, budget(season)
+	t.Logf("%.1f h by the formula, %.1f h by the calendar", got, want)
+	if math.Abs(got/want-1) > 0.01 {
+		t.Errorf("the supply is %.1f h; the calendar has %.1f h", got, want)
+	}
+	demo := load(t, "demo", 0)
+	_, seconds := wants(demo, 12)
+	t.Logf("the demo wants %.3f of its supply", seconds/3600/budget(demo))
+	if got := seconds / 3600 / budget(demo); math.Abs(got-1) > 0.03 {
+		t.Errorf("the demo wants %.3f of its supply; want 1", got)
+	}
+}
+
+// budget is the open time of all telescopes, h, less what is kept free.
+func budget(sv *survey.Survey) float64 {
+	exact := visibility.NewExact(ephemeris.NewClock(nil, sv.Orientation))
+	calendar := constraints.NewCalendar(sv, exact, nil)
+	var hours float64
+	for telescope := range sv.Telescopes {
+		for night := range sv.Nights() {
+			hours += calendar.Budget(telescope, night) / 3600
+		}
+	}
+	return hours
 }
