@@ -166,9 +166,9 @@ func (k claim) share(p *survey.Program, told, own, all, visit float64) {
 	surely := more < p.ShareMin-ratioSlack || fewer > p.ShareMax+ratioSlack
 	what := ""
 	switch is := math.Abs(told); {
-	case off <= ratioNear && is > ratioNear:
+	case off <= ratioNear && !(is <= ratioNear):
 		what = "share_breach is told, and the share is within its bounds"
-	case is > ratioNear && math.Abs(is-off) > ratioNear:
+	case !(is <= ratioNear) && !(math.Abs(is-off) <= ratioNear):
 		what = "share_breach is not how far the share is out of its bounds"
 	case surely && is <= ratioNear && off > ratioNear:
 		what = "the share is out of its bounds by more than one visit, and share_breach doesn't say so"
