@@ -181,7 +181,7 @@ func (l *Line) stateNote() string {
 }
 
 func clock(unix float64) string {
-	return time.UnixMicro(int64(math.Round(unix*1e6))).UTC().Format("15:04:05")
+	return time.UnixMicro(int64(math.Round(unix * 1e6))).UTC().Format("15:04:05")
 }
 
 // localClock gives local time with its offset from UTC.

@@ -45,12 +45,12 @@ func Build(ctx context.Context, sv *survey.Survey, exact *visibility.Exact, cal 
 		places: constraints.Positions(sv), sites: constraints.Sites(sv),
 		shots: slices.Clone(outcome.Plan.Exposures),
 	}
-	slices.SortStableFunc(b.shots, func(x, y model.Exposure) int {
-		return cmp.Or(cmp.Compare(x.Start, y.Start), cmp.Compare(sv.Telescopes[x.Telescope].Name, sv.Telescopes[y.Telescope].Name), cmp.Compare(x.Visit, y.Visit))
-	})
 	if err := b.check(); err != nil {
 		return nil, err
 	}
+	slices.SortStableFunc(b.shots, func(x, y model.Exposure) int {
+		return cmp.Or(cmp.Compare(x.Start, y.Start), cmp.Compare(sv.Telescopes[x.Telescope].Name, sv.Telescopes[y.Telescope].Name), cmp.Compare(x.Visit, y.Visit))
+	})
 	if err := b.look(ctx); err != nil {
 		return nil, err
 	}

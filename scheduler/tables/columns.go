@@ -57,12 +57,23 @@ func ReadColumns(name string, r io.ReaderAt, size int64, maxRows int) (columns [
 		columns = append(columns, Column{Name: c.Name(), Numeric: cr.number != nil})
 	}
 	n := f.NumRows()
+	if n < 0 {
+		return nil, damaged(name, errRowCount)
+	}
 	if n > int64(maxRows) {
 		return nil, fmt.Errorf("%s: it has %d rows; want at most %d", name, n, maxRows)
 	}
 	for _, g := range f.RowGroups() {
 		for k, chunk := range g.ColumnChunks() {
-			if err := readChunkInto(&columns[k], chunk, readers[k], maxRows); err != nil {
+			c := &columns[k]
+			err := eachValue(chunk, func(v parquet.Value) error {
+				if c.Len() >= int(n) {
+					return errRowCount
+				}
+				c.add(v, readers[k])
+				return nil
+			})
+			if err != nil {
 				return nil, damaged(name, err)
 			}
 		}
@@ -73,42 +84,6 @@ func ReadColumns(name string, r io.ReaderAt, size int64, maxRows int) (columns [
 		}
 	}
 	return columns, nil
-}
-
-// readChunkInto appends the values of one column chunk.
-func readChunkInto(c *Column, chunk parquet.ColumnChunk, cr cellReader, maxRows int) error {
-	pages := chunk.Pages()
-	defer pages.Close()
-	buffer := make([]parquet.Value, 1024)
-	for {
-		page, err := pages.ReadPage()
-		if errors.Is(err, io.EOF) {
-			return nil
-		}
-		if err != nil {
-			return err
-		}
-		values := page.Values()
-		for {
-			k, err := values.ReadValues(buffer)
-			if c.Len()+k > maxRows {
-				return errors.New("the row count is wrong")
-			}
-			for _, v := range buffer[:k] {
-				c.add(v, cr)
-			}
-			if errors.Is(err, io.EOF) {
-				break
-			}
-			if err != nil {
-				return err
-			}
-			if k == 0 {
-				return errors.New("a page ends early")
-			}
-		}
-		parquet.Release(page)
-	}
 }
 
 // cellReader turns a value into a number or a text.

@@ -2,7 +2,7 @@ package tables
 
 import (
 	"bytes"
-	"errors"
+	"encoding/binary"
 	"fmt"
 	"io"
 	"os"
@@ -106,34 +106,16 @@ func (t Table[T]) Decode(name string, data []byte) (rows []T, err error) {
 	if n < 0 || n > int64(len(data))*maxRowsPerByte {
 		return nil, fmt.Errorf("%s: it claims %d rows in %d bytes; want a whole file", name, n, len(data))
 	}
-	r := parquet.NewGenericReader[T](f)
-	defer r.Close()
-	for {
-		rows = slices.Grow(rows, readChunk)
-		k, err := r.Read(rows[len(rows) : len(rows)+readChunk])
-		rows = rows[:len(rows)+k]
-		if errors.Is(err, io.EOF) {
-			break
-		}
-		if err != nil {
-			return nil, damaged(name, err)
-		}
-		if k == 0 || int64(len(rows)) > n {
-			return nil, damaged(name, errors.New("the row count is wrong"))
-		}
+	rows, err = readRows[T](f, int(n))
+	if err != nil {
+		return nil, damaged(name, err)
 	}
-	if int64(len(rows)) != n {
-		return nil, damaged(name, fmt.Errorf("%d rows of %d", len(rows), n))
-	}
-	return slices.Clip(rows), nil
+	return rows, nil
 }
 
-const (
-	readChunk = 4096
-	// maxRowsPerByte bounds what a file may claim: constant columns compress
-	// to next to nothing.
-	maxRowsPerByte = 1 << 12
-)
+// maxRowsPerByte bounds what a file may claim: constant columns compress to
+// next to nothing.
+const maxRowsPerByte = 1 << 12
 
 // ReadFile is Decode on a file.
 func (t Table[T]) ReadFile(path string) ([]T, error) {
@@ -146,11 +128,38 @@ func (t Table[T]) ReadFile(path string) ([]T, error) {
 
 // openParquet opens a Parquet file of any schema.
 func openParquet(name string, r io.ReaderAt, size int64) (*parquet.File, error) {
+	if err := checkFrame(r, size); err != nil {
+		return nil, fmt.Errorf("%s: it can't be read as Parquet (%w); want a whole Parquet file", name, err)
+	}
 	f, err := parquet.OpenFile(r, size, parquet.SkipPageIndex(true), parquet.SkipBloomFilters(true))
 	if err != nil {
 		return nil, fmt.Errorf("%s: it can't be read as Parquet (%w); want a whole Parquet file", name, err)
 	}
 	return f, nil
+}
+
+// checkFrame looks at the marks at both ends of a Parquet file and at the
+// length of its footer, which the library would take at its word.
+func checkFrame(r io.ReaderAt, size int64) error {
+	const mark = "PAR1"
+	if size < 12 {
+		return fmt.Errorf("%d bytes are too few", size)
+	}
+	var head [4]byte
+	var tail [8]byte
+	if _, err := r.ReadAt(head[:], 0); err != nil {
+		return err
+	}
+	if _, err := r.ReadAt(tail[:], size-8); err != nil && err != io.EOF {
+		return err
+	}
+	if string(head[:]) != mark || string(tail[4:]) != mark {
+		return fmt.Errorf("the mark %s is missing at an end", mark)
+	}
+	if footer := int64(binary.LittleEndian.Uint32(tail[:4])); footer > size-12 {
+		return fmt.Errorf("its footer would have %d bytes", footer)
+	}
+	return nil
 }
 
 // checkSchema compares a file column by column with what is wanted.
