@@ -19,17 +19,21 @@ const width = 80
 // WriteText writes the sheet as plain text of at most 80 columns.
 func (s *Sheet) WriteText(w io.Writer) error {
 	b := bufio.NewWriter(w)
-	p := func(format string, a ...any) {
-		for _, line := range wrap(fmt.Sprintf(format, a...), width) {
+	hang := func(indent int, text string) {
+		for _, line := range wrap(text, width, indent) {
 			b.WriteString(line)
 			b.WriteByte('\n')
 		}
+	}
+	p := func(format string, a ...any) {
+		text := fmt.Sprintf(format, a...)
+		hang(len(text)-len(strings.TrimLeft(text, " ")), text)
 	}
 	p("%s", s.title())
 	p("%s", s.where())
 	p("%s", strings.Repeat("=", width))
 	for _, f := range s.facts() {
-		p("%-10s %s", f.name, f.text)
+		hang(11, fmt.Sprintf("%-10s %s", f.name, f.text))
 	}
 	p("%s", strings.Repeat("-", width))
 	if s.Totals.Exposures == 0 {
@@ -49,7 +53,7 @@ func (s *Sheet) WriteText(w io.Writer) error {
 	}
 	p("")
 	for _, c := range s.Cautions {
-		p("! %s", c)
+		hang(2, "! "+c)
 	}
 	return b.Flush()
 }
@@ -214,27 +218,20 @@ func ra(v *tables.VisitRow) string { return visibility.FormatHours(v.RA*math.Pi/
 func dec(v *tables.VisitRow) string { return visibility.FormatDegrees(v.Dec*math.Pi/180, 1) }
 
 // wrap breaks a text at spaces into lines of at most n characters; lines after
-// the first keep the indent of the first. A longer word is cut.
-func wrap(text string, n int) []string {
-	if utf8.RuneCountInString(text) <= n {
-		return []string{text}
-	}
-	indent := text[:len(text)-len(strings.TrimLeft(text, " "))]
-	if strings.HasPrefix(text, "! ") {
-		indent = "  "
-	}
+// the first are indented. A longer word is cut.
+func wrap(text string, n, indent int) []string {
 	var out []string
 	runes := []rune(text)
-	for len(runes) > n {
+	for start := len(text) - len(strings.TrimLeft(text, " ")); len(runes) > n; start = indent {
 		cut := n
-		for k := n; k > len(indent); k-- {
+		for k := n; k > start; k-- {
 			if runes[k] == ' ' {
 				cut = k
 				break
 			}
 		}
 		out = append(out, strings.TrimRight(string(runes[:cut]), " "))
-		runes = append([]rune(indent), []rune(strings.TrimLeft(string(runes[cut:]), " "))...)
+		runes = []rune(strings.Repeat(" ", indent) + strings.TrimLeft(string(runes[cut:]), " "))
 	}
 	return append(out, string(runes))
 }
