@@ -38,7 +38,7 @@ func NewPrices(p *model.Problem) *Prices {
 	lo, hi := int64(1<<62), int64(-1<<62)
 	for t := range p.Scopes {
 		for n := range p.Nights {
-			for _, o := range p.Open(t, n) {
+			for _, o := range p.OpenOuter(t, n) {
 				lo, hi = min(lo, o.From), max(hi, o.To)
 			}
 		}
