@@ -202,6 +202,8 @@ func TestHouseImports(t *testing.T) {
 				t.Errorf("%s: imports math/rand; use math/rand/v2 with rand.NewPCG(seed, stream)", s.path)
 			case strings.HasPrefix(path, "github.com/parquet-go/") && s.dir != "scheduler/tables":
 				t.Errorf("%s: imports the Parquet library; use scheduler/tables, the one room that knows it", s.path)
+			case strings.HasPrefix(path, "modernc.org/sqlite") && s.dir != "scheduler/ledger":
+				t.Errorf("%s: imports SQLite; use scheduler/ledger, the one room that knows it", s.path)
 			case path == "C":
 				t.Errorf("%s: imports C; the program builds with CGO_ENABLED=0", s.path)
 			}
