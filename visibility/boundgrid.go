@@ -106,7 +106,8 @@ func (g *BoundGrid) Cell(unix float64) int {
 
 // Bound returns, for the field's direction in cell k, values at its ends such
 // that the quality at any instant of the cell is at most the line between
-// them; both at most 1. See the head of upper.go.
+// them. They may be a little above 1: a line between ends held down to 1
+// would cut off what the slack is for. See the head of upper.go.
 func (g *BoundGrid) Bound(k, filter int, c ephemeris.Vec) (left, right float64) {
 	ft := &g.sky.filters[filter]
 	fl := &g.cells[k*len(g.sky.filters)+filter]
@@ -122,15 +123,15 @@ func (g *BoundGrid) Bound(k, filter int, c ephemeris.Vec) (left, right float64) 
 	h := b.T - a.T
 	// The direction moves by under 1" a cell; 4e-6 covers that and the tables.
 	slack := curve*h*h/8 + 4e-6
-	return math.Min(1, left+slack), math.Min(1, right+slack)
+	return left + slack, right + slack
 }
 
-// above evaluates R of upper.go with the cell's light floors.
+// above evaluates R of upper.go with the cell's light floors, below the
+// horizon as on it.
 func (ft *filterSky) above(sin, moon, twilight float64, fr *Frame, c ephemeris.Vec) float64 {
-	if sin <= 0 {
-		return 0
-	}
-	row := ft.row(sin)
+	// Below the horizon the quality is 0, but the line must pass above what it
+	// is just over it.
+	row := ft.row(math.Max(0, sin))
 	sky := row.dark + twilight
 	if moon > 0 {
 		cos := fr.Moon.Dot(c)

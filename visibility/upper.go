@@ -172,15 +172,15 @@ func culminates(a, b *Frame) bool {
 
 // NodeQuality returns, for the field's direction at frame k, its quality there
 // and a node value: the quality at any instant between frames k and k+1 is at
-// most the line between their node values (both at most 1). Each node is
-// bounded with the light floors of both its cells.
+// most the line between their node values, which may be a little above 1. Each
+// node is bounded with the light floors of both its cells.
 func (s *Sky) NodeQuality(g *FrameGrid, k, filter int, c ephemeris.Vec) (q, upper float64) {
 	fr := &g.Frames[k]
 	sin := fr.SinAltitude(c)
 	ft := &s.filters[filter]
-	if sin <= 0 {
-		// Quality is 0 here; the slack covers a rise within the cell.
-		return 0, math.Min(1, ft.curve.dark[0]*g.Step*g.Step/8+4e-6)
+	below := sin <= 0
+	if below {
+		sin = 0 // the line must pass above what quality is just over the horizon
 	}
 	fl := &g.nodes[k*g.filters+filter]
 	row := ft.row(sin)
@@ -198,13 +198,15 @@ func (s *Sky) NodeQuality(g *FrameGrid, k, filter int, c ephemeris.Vec) (q, uppe
 			floor += fl.moon * f * row.loss
 		}
 	}
-	q = math.Min(1, row.clear/plain)
+	if !below {
+		q = math.Min(1, row.clear/plain)
+	}
 	upper = row.clear / floor
 	if fl.moon > 0 {
 		slack += fl.l1*ft.curve.cross[min(int(sin*curveBins), curveBins-1)] + upper*(fl.l2+2*fl.l1*fl.l1)
 	}
 	// The direction moves by under 1" a cell; 4e-6 covers that and the tables.
-	return q, math.Min(1, upper+slack*g.Step*g.Step/8+4e-6)
+	return q, upper + slack*g.Step*g.Step/8 + 4e-6
 }
 
 var cosNearBound = math.Cos(13 * math.Pi / 180)
