@@ -5,8 +5,9 @@ import "nightwright/scheduler/dual"
 // effort is what a search spends, in steps.
 type effort struct {
 	levels     []dual.Level
-	ceilingBin float64 // width of the start bins of the final ceiling, s
-	construct  float64 // theta of the construction
+	steer      dual.Level // from the ceiling's prices to the search's
+	ceilingBin float64    // width of the start bins of the final ceiling, s
+	construct  float64    // theta of the construction
 	sweeps     []float64
 }
 
@@ -17,6 +18,7 @@ var efforts = map[string]effort{
 			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 8, Eta: 1, EtaLast: 0.2},
 			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 16, Sample: 2, Eta: 0.5, EtaLast: 0.1},
 		},
+		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 12, Sample: 2, Eta: 0.3, EtaLast: 0.05},
 		ceilingBin: 600,
 		construct:  0.8,
 		sweeps:     []float64{0.4, 0},
@@ -27,6 +29,7 @@ var efforts = map[string]effort{
 			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 2, Eta: 0.5, EtaLast: 0.1},
 			{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: 10, Sample: 1, Eta: 0.15, EtaLast: 0.04},
 		},
+		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 16, Sample: 2, Eta: 0.3, EtaLast: 0.05},
 		ceilingBin: 300,
 		construct:  0.8,
 		sweeps:     []float64{0.6, 0.3, 0},
@@ -37,6 +40,7 @@ var efforts = map[string]effort{
 			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 40, Sample: 1, Eta: 0.5, EtaLast: 0.1},
 			{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: 40, Sample: 1, Eta: 0.2, EtaLast: 0.02},
 		},
+		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 2, Eta: 0.3, EtaLast: 0.05},
 		ceilingBin: 150,
 		construct:  0.8,
 		sweeps:     []float64{0.8, 0.6, 0.4, 0.2, 0, 0, 0},

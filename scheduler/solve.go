@@ -74,6 +74,10 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	c.report(model.Progress{Phase: "ceiling"})
 	ceiling := ascent.Ceiling(c.effort.ceilingBin)
 	c.report(model.Progress{Phase: "ceiling", Done: 1, Total: 1, Ceiling: ceiling})
+	prices := ascent.Prices().List()
+	ascent.Steer(c.ctx, c.effort.steer, func(step, of int, _ float64) {
+		c.report(model.Progress{Phase: "steering", Done: step, Total: of, Ceiling: ceiling})
+	})
 	s := search.New(c.p, ascent.Prices(), ascent.Oracle().Mu, seed)
 	s.Construct(c.ctx, c.effort.construct, func(done, of int) {
 		c.report(model.Progress{Phase: "construction", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
@@ -105,7 +109,7 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	plan := s.Plan()
 	return &model.Outcome{
 		Plan: plan, Coverage: s.Coverage(), Ceiling: ceiling, Status: status,
-		Prices: ascent.Prices().List(), Stats: s.Stats().List(), Shares: shares(c.p, plan),
+		Prices: prices, Stats: s.Stats().List(), Shares: shares(c.p, plan),
 	}
 }
 

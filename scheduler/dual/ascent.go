@@ -138,6 +138,20 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 	a.prices.integrate()
 }
 
+// Steer turns the prices into ones for a plan search: visits are charged the
+// gap a plan will really need on the telescope, not the least. What it leaves
+// proves nothing; take List before.
+func (a *Ascent) Steer(ctx context.Context, lv Level, progress func(step, of int, bound float64)) {
+	o := a.oracle
+	for t := range o.shapes {
+		extra := max(0, a.p.Scopes[t].TypicalGap-a.p.Scopes[t].LeastGap)
+		for i := range o.shapes[t] {
+			o.shapes[t][i].busy = o.shapes[t][i].length + a.p.Scopes[t].LeastGap + extra
+		}
+	}
+	a.Run(ctx, lv, progress)
+}
+
 // keepFactor returns, per telescope, the part of the open time that keep_free leaves.
 func (a *Ascent) keepFactor() []float64 {
 	out := make([]float64, len(a.p.Scopes))
@@ -168,17 +182,11 @@ func (a *Ascent) sweep(sample, offset int) float64 {
 		defer pool.put(sc)
 		load := a.loads[c]
 		clear(load)
-		var picks []pick
 		for f := c * fields / chunks; f < (c+1)*fields/chunks; f++ {
 			if a.rank[f]%sample != offset {
 				continue
 			}
-			for wi := a.p.FieldWant[f]; wi < a.p.FieldWant[f+1]; wi++ {
-				var b float64
-				b, picks = o.best(sc, int(wi), picks[:0])
-				sums[c] += b
-				a.addLoad(load, int(wi), picks)
-			}
+			sums[c] += o.field(sc, f, func(wi int, picks []pick) { a.addLoad(load, wi, picks) })
 		}
 	})
 	var sum float64

@@ -18,7 +18,7 @@ import (
 func (a *Ascent) Ceiling(width float64) float64 {
 	a.oracle.Fine(width)
 	a.oracle.Refresh()
-	sum := a.sweep(1, 0) + a.capacityValue() - a.keepFreeValue() + a.bonusValue()
+	sum := a.sweep(1, 0) + a.capacityValue() - a.keepFreeValue()
 	return math.Min(1, sum*(1+1e-9)+1e-12)
 }
 
@@ -42,23 +42,6 @@ func (a *Ascent) keepFreeValue() float64 {
 			if spare > 0 {
 				sum += a.oracle.least[t*a.p.Nights+n] * model.Sec(spare)
 			}
-		}
-	}
-	return sum
-}
-
-// bonusValue bounds the finish bonuses: every field that could finish is
-// taken to finish.
-func (a *Ascent) bonusValue() float64 {
-	b := a.p.Survey.FinishBonus
-	if b == 0 {
-		return 0
-	}
-	var sum float64
-	total := a.p.Survey.TotalWeight()
-	for f := range a.p.Survey.Fields {
-		if a.p.FieldWant[f] < a.p.FieldWant[f+1] {
-			sum += b * a.p.Survey.WeightOf(&a.p.Survey.Fields[f]) / ((1 + b) * total)
 		}
 	}
 	return sum

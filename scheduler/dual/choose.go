@@ -20,29 +20,72 @@ func (o *Oracle) best(sc *scratch, wi int, picks []pick) (float64, []pick) {
 	}
 	from := len(picks)
 	best := math.Inf(1)
-	for floor := 0.9 * o.Mu[wi]; ; floor *= 0.6 {
+	for floor := 0.9 * math.Max(0, o.Mu[wi]); ; floor *= 0.6 {
 		if floor < 1e-3*w.Value {
 			floor = 0
 		}
-		o.gather(sc, wi, floor)
-		o.sortBins(sc)
 		var bound float64
-		picks = picks[:from]
-		switch {
-		case w.PerNight > 0 && w.GapMin < 12*3600*model.Micro:
-			bound, picks = o.perNight(sc, wi, w, floor, picks)
-		case w.GapMin < o.bin:
-			bound, picks = o.repeated(sc, wi, w, floor, picks)
-		default:
-			bound, picks = o.spaced(sc, wi, w, floor, picks)
-		}
-		o.clean(sc)
+		bound, picks = o.above(sc, wi, floor, picks[:from])
 		best = math.Min(best, bound)
 		// Fewer visits than wanted above the floor: look further down.
 		if floor == 0 || o.Mu[wi] > floor {
 			return best, picks
 		}
 	}
+}
+
+// above solves a want over the starts worth more than floor.
+func (o *Oracle) above(sc *scratch, wi int, floor float64, picks []pick) (bound float64, _ []pick) {
+	w := &o.p.Wants[wi]
+	o.gather(sc, wi, floor)
+	o.sortBins(sc)
+	switch {
+	case w.PerNight > 0 && w.GapMin < 12*3600*model.Micro:
+		bound, picks = o.perNight(sc, wi, w, floor, picks)
+	case w.GapMin < o.bin:
+		bound, picks = o.repeated(sc, wi, w, floor, picks)
+	default:
+		bound, picks = o.spaced(sc, wi, w, floor, picks)
+	}
+	o.clean(sc)
+	return bound, picks
+}
+
+// field bounds what the wants of a field earn together, finish bonus and all:
+// either some visit is missing, and each want earns its best of at most its
+// visits, or none is, and each earns its best of exactly its visits, plus the
+// bonus. The second sum only counts when it loses less than the bonus to the
+// first, so multipliers down to -bonus are enough; every multiplier's bound
+// is valid: n mu + f(mu) for any real mu when exactly n are taken.
+func (o *Oracle) field(sc *scratch, f int, chosen func(wi int, picks []pick)) float64 {
+	from, to := int(o.p.FieldWant[f]), int(o.p.FieldWant[f+1])
+	bonus := o.p.Bonus(f)
+	var sum, full float64
+	for wi := from; wi < to; wi++ {
+		var b float64
+		b, sc.picks = o.best(sc, wi, sc.picks[:0])
+		sum += b
+		w := &o.p.Wants[wi]
+		if bonus > 0 && len(w.Scopes) == 0 {
+			full = math.Inf(-1)
+		} else if bonus > 0 && o.Mu[wi] > 0 {
+			full += b // at a positive multiplier all visits are got already
+		} else if bonus > 0 {
+			mu := o.Mu[wi]
+			for _, floor := range []float64{-bonus, -bonus / float64(w.Visits)} {
+				var c float64
+				c, sc.picks = o.above(sc, wi, floor, sc.picks[:0])
+				b = math.Min(b, c)
+			}
+			o.Mu[wi] = mu
+			full += b
+		}
+		chosen(wi, sc.picks)
+	}
+	if bonus > 0 && full+bonus > sum {
+		return full + bonus
+	}
+	return sum
 }
 
 // sortBins leaves the touched bins, ascending, in sc.order.
@@ -228,7 +271,7 @@ func (o *Oracle) repeated(sc *scratch, wi int, w *model.Want, floor float64, pic
 	var bound float64
 	left, mu := n, floor
 	for _, c := range cells {
-		if left == 0 || c.worth <= 0 {
+		if left == 0 || c.worth <= floor {
 			break
 		}
 		k := min(per, left)
@@ -239,9 +282,9 @@ func (o *Oracle) repeated(sc *scratch, wi int, w *model.Want, floor float64, pic
 			picks = append(picks, pick{bin: c.bin, scope: sc.scope[c.bin], night: sc.night[c.bin], worth: c.worth, at: sc.at[c.bin]})
 		}
 	}
+	// Visits worth less than the floor were not gathered.
+	bound += float64(left) * floor
 	if left > 0 {
-		// Visits worth less than the floor were not gathered.
-		bound += float64(left) * floor
 		mu = floor
 	}
 	o.Mu[wi] = mu
@@ -283,19 +326,20 @@ func (o *Oracle) perNight(sc *scratch, wi int, w *model.Want, floor float64, pic
 	})
 	mu := floor
 	for _, n := range order {
-		if left == 0 || best[n] <= 0 {
+		if left == 0 || best[n] <= floor {
 			break
 		}
 		k := min(left, int(w.PerNight))
 		bound += float64(k) * best[n]
 		left -= k
 		mu = math.Max(floor, best[n])
-		if b := bin[n]; b >= 0 {
-			for range k {
-				picks = append(picks, pick{bin: b, scope: sc.scope[b], night: sc.night[b], worth: best[n], at: sc.at[b]})
-			}
+		for range k {
+			b := bin[n]
+			picks = append(picks, pick{bin: b, scope: sc.scope[b], night: sc.night[b], worth: best[n], at: sc.at[b]})
 		}
 	}
+	// Visits worth less than the floor were not gathered.
+	bound += float64(left) * floor
 	o.Mu[wi] = mu
 	return bound, picks
 }

@@ -152,6 +152,7 @@ type scratch struct {
 	take    []bool
 	prev    []int32
 	windows []model.Span
+	picks   []pick
 	up      []cellBound
 	step    [][]binBest
 }
@@ -272,6 +273,9 @@ func (o *Oracle) scan(sc *scratch, wi int, w *model.Want, step int, t int32, n i
 				q := up[i].left + float64(e.frac)*(up[i].right-up[i].left)
 				if e.frac == 0 && i > 0 && up[i-1].right > q {
 					q = up[i-1].right
+				}
+				if e.frac == 1 && i+1 < len(up) && up[i+1].left > q {
+					q = up[i+1].left
 				}
 				return value*q + base - e.cost
 			}

@@ -84,8 +84,11 @@ func (o *Oracle) startAt(pn *priceNight, g *visibility.BoundGrid, sh shape, s in
 	cell := g.Cell(mid)
 	from, to := g.Frames[cell].T, g.Frames[cell+1].T
 	frac := math.Max(0, math.Min(1, (mid-from)/(to-from)))
-	if frac < 1e-6 {
-		frac = 0 // on the edge: both cells count
+	// Within the rounding of instants of an edge both cells count.
+	if mid-from < 1e-6 {
+		frac = 0
+	} else if to-mid < 1e-6 {
+		frac = 1
 	}
 	return start{
 		at:   s,

@@ -30,6 +30,7 @@ type Problem struct {
 	open      [][]Span                // [telescope * Nights + night]
 	outer     [][]Span                // the same, widened for the ceiling
 	grids     []*visibility.FrameGrid // [site * Nights + night]
+	bonus     []float64               // [field]
 	MaxValue  float64                 // largest Want.Value, for scales
 	Unserved  float64                 // weight share of demands that no telescope qualifies for; they can't be got
 }
@@ -43,6 +44,7 @@ type Want struct {
 	MinQuality    float64
 	Steps         []Step  // the exposures of a visit
 	GapMin        int64   // us between starts
+	Spacing       int64   // us a plan keeps between starts: GapMin, or what keeps two sets apart
 	PerNight      int32   // 0: no limit
 	Scopes        []int32 // telescopes that may serve it, ascending
 	Program       int32
@@ -62,6 +64,7 @@ type Scope struct {
 	*survey.Telescope
 	ID, Site, Class int32
 	LeastGap        int64 // us, least gap after any exposure
+	TypicalGap      int64 // us, a gap with a slew of typicalSlew
 }
 
 // Span is [From, To), UTC Unix microseconds.
@@ -106,13 +109,18 @@ func NewProblem(sv *survey.Survey, sky *visibility.Sky, cal *constraints.Calenda
 	return p, nil
 }
 
+// typicalSlew is the slew that plans make on the whole, rad (measured on the
+// starter surveys: 10 to 20 deg).
+const typicalSlew = 15 * math.Pi / 180
+
 func (p *Problem) setScopes() {
 	for i := range p.Survey.Telescopes {
 		t := &p.Survey.Telescopes[i]
 		p.Scopes = append(p.Scopes, Scope{
 			Telescope: t, ID: int32(i), Site: int32(t.Site), Class: int32(p.Windows.Class(i)),
 			// Rounded down: it enters the ceiling.
-			LeastGap: int64(math.Floor(mount.LeastGap(t)*1e3)) * 1000,
+			LeastGap:   int64(math.Floor(mount.LeastGap(t)*1e3)) * 1000,
+			TypicalGap: MicroCeil(math.Max(t.Readout, t.Slew.Settle+mount.AxisTime(typicalSlew, t.Slew.Rate, t.Slew.Acceleration))),
 		})
 	}
 }
@@ -165,6 +173,7 @@ func (p *Problem) addWants(f int, total float64) {
 	sv := p.Survey
 	fd := &sv.Fields[f]
 	n := sv.Wanted(fd)
+	p.bonus = append(p.bonus, sv.FinishBonus*sv.WeightOf(fd)/((1+sv.FinishBonus)*total))
 	value := sv.WeightOf(fd) / (float64(n) * (1 + sv.FinishBonus) * total)
 	demands := sv.Programs[fd.Program].Demands
 	for d := range demands {
@@ -182,9 +191,26 @@ func (p *Problem) addWants(f int, total float64) {
 				w.Scopes = append(w.Scopes, int32(t))
 			}
 		}
+		w.Spacing = max(w.GapMin, p.setSpan(&w))
 		p.MaxValue = math.Max(p.MaxValue, value)
 		p.Wants = append(p.Wants, w)
 	}
+}
+
+// setSpan returns the longest a set can last, us: two sets of a demand on one
+// field must not overlap.
+func (p *Problem) setSpan(w *Want) int64 {
+	if len(w.Steps) < 2 {
+		return 0
+	}
+	var span, last int64
+	for i := range w.Steps {
+		span += w.Steps[i].After + w.Steps[i].Tolerance
+	}
+	for _, t := range w.Scopes {
+		last = max(last, p.Length(&w.Steps[len(w.Steps)-1], t))
+	}
+	return span + last
 }
 
 // Open returns the open intervals of a telescope-night, ascending.
@@ -192,6 +218,10 @@ func (p *Problem) Open(scope, night int) []Span { return p.open[scope*p.Nights+n
 
 // Grid returns the frames of a site and night, or nil when it is never open.
 func (p *Problem) Grid(site, night int) *visibility.FrameGrid { return p.grids[site*p.Nights+night] }
+
+// Bonus returns what finishing a field adds to C. A field with a demand that
+// no telescope may serve can't be finished.
+func (p *Problem) Bonus(f int) float64 { return p.bonus[f] }
 
 // Direction returns the apparent direction of a want's field.
 func (p *Problem) Direction(w *Want, us int64) ephemeris.Vec {

@@ -53,6 +53,9 @@ func (s *state) save(index int) {
 // commit keeps the transaction's changes.
 func (s *state) commit() {
 	s.undo.active = false
+	for _, v := range s.undo.born {
+		s.visits[v].born = -1
+	}
 	s.free = append(s.free, s.undo.died...)
 }
 
@@ -64,7 +67,9 @@ func (s *state) rollback() {
 		}
 	}
 	for _, v := range s.undo.died {
-		s.remember(v)
+		if s.visits[v].born < 0 {
+			s.remember(v)
+		}
 	}
 	for i := range s.undo.nights {
 		sn := &s.undo.nights[i]
@@ -85,7 +90,7 @@ func (s *state) sync(n *night) {
 		e := &n.list[i]
 		v := &s.visits[e.visit]
 		if e.step == 0 {
-			v.start = e.start
+			v.start, v.early, v.late = e.start, e.early, e.late
 			v.credit = 0
 		}
 	}
@@ -156,7 +161,7 @@ func (s *state) newVisit(want, scope, nightIndex int32) int32 {
 		id = int32(len(s.visits))
 		s.visits = append(s.visits, visit{})
 	}
-	s.visits[id] = visit{want: want, scope: scope, night: nightIndex}
+	s.visits[id] = visit{want: want, scope: scope, night: nightIndex, born: int32(len(s.undo.born))}
 	s.remember(id)
 	s.undo.born = append(s.undo.born, id)
 	return id
@@ -179,6 +184,7 @@ func (s *state) insert(id int32, step int, sp spot, early, late int64) bool {
 	if !s.set(v.scope, &e, target) {
 		return false
 	}
+	s.keepQuality(v.scope, &e)
 	i := n.behind(sp.after, sp.step, target)
 	n.list = append(n.list, entry{})
 	copy(n.list[i+1:], n.list[i:])
@@ -191,6 +197,26 @@ func (s *state) insert(id int32, step int, sp spot, early, late int64) bool {
 	}
 	s.sync(n)
 	return true
+}
+
+// keepQuality draws the shift window of an entry in until the quality at both
+// its ends is above the demand's least.
+func (s *state) keepQuality(scope int32, e *entry) {
+	w := &s.p.Wants[e.want]
+	if w.MinQuality == 0 {
+		return
+	}
+	for _, side := range []*int64{&e.early, &e.late} {
+		for try := 0; *side != e.start; try++ {
+			if s.p.Quality(w, int(e.step), scope, *side+e.length/2) >= w.MinQuality*1.05+qualityGuard {
+				break
+			}
+			*side = e.start + (*side-e.start)/2
+			if try == 4 {
+				*side = e.start
+			}
+		}
+	}
 }
 
 // behind returns the index after a given exposure, or by time when that is
@@ -276,15 +302,6 @@ func (s *state) shift(scope int32, e *entry, start int64) bool {
 	return true
 }
 
-// starts of the visits of a want other than one, for the cadence.
-func (s *state) startsOf(want int32) []int64 {
-	var out []int64
-	for _, id := range s.of[want] {
-		out = append(out, s.visits[id].start)
-	}
-	return out
-}
-
 // maxShift is the furthest a visit may be pushed from where it was placed, us.
 const maxShift = 20 * 60 * model.Micro
 
@@ -313,7 +330,9 @@ func (s *state) undoTo(m mark) {
 	}
 	s.undo.born = s.undo.born[:m.born]
 	for _, v := range s.undo.died[m.died:] {
-		s.remember(v)
+		if s.visits[v].born < int32(m.born) {
+			s.remember(v)
+		}
 	}
 	s.undo.died = s.undo.died[:m.died]
 	n := &s.nights[m.index]

@@ -98,7 +98,7 @@ func (c *chooser) solve(w *model.Want, spots []spot, mu float64) (float64, int) 
 	c.take, c.prev = grow(c.take, m+1), grow(c.prev, m+1)
 	c.f[0], c.cnt[0] = 0, 0
 	p := 0
-	gap := w.GapMin
+	gap := w.Spacing
 	if gap > 0 {
 		gap += cadenceEase
 	}
@@ -106,7 +106,7 @@ func (c *chooser) solve(w *model.Want, spots []spot, mu float64) (float64, int) 
 		for p < i && spots[i].start-spots[p].start >= gap {
 			p++
 		}
-		if w.GapMin == 0 {
+		if w.Spacing == 0 {
 			p = i
 		}
 		v := spots[i].profit - mu + c.f[p]

@@ -18,6 +18,7 @@ type placer struct {
 	steps  [][]spot // of sets: spots by step
 	combos []combo
 	picked []int
+	banned []spot // spots of the want being filled that turned out not to work
 }
 
 // combo is a whole set on one telescope-night: a spot for each step.
@@ -37,39 +38,54 @@ func newPlacer(s *state, mu []float64) *placer {
 const skipBelow = 0.97
 
 // place re-places all visits of a field's wants and reports whether the plan
-// changed for the better (in score less theta times the price of time).
+// changed for the better (in score less theta times the price of time). When
+// a finish bonus is near, it also tries to get every visit, at a loss on some.
 func (pl *placer) place(field int) bool {
 	s := pl.s
-	s.begin()
+	s.stats.Placed++
 	before := pl.objective()
-	changed := false
+	s.begin()
+	pl.replace(field, 0)
+	after := pl.objective()
+	if bonus := s.p.Bonus(field); bonus > 0 && s.got[field] < s.wanted[field] && 4*s.got[field] >= 3*s.wanted[field] {
+		lack := float64(s.wanted[field] - s.got[field])
+		s.rollback()
+		s.begin()
+		pl.replace(field, bonus/lack)
+		if forced := pl.objective(); forced > after {
+			after = forced
+		} else {
+			s.rollback()
+			s.begin()
+			pl.replace(field, 0)
+		}
+	}
+	if after < before {
+		s.rollback()
+		s.stats.Undone++
+		return false
+	}
+	s.commit()
+	if after > before {
+		s.stats.Better++
+	}
+	return true
+}
+
+// replace takes a field's visits out and puts them back, with extra added to
+// the worth of every spot.
+func (pl *placer) replace(field int, extra float64) {
+	s := pl.s
 	for wi := s.p.FieldWant[field]; wi < s.p.FieldWant[field+1]; wi++ {
 		for _, id := range slices.Clone(s.of[wi]) {
 			if !s.visits[id].fixed {
 				s.remove(id)
-				changed = true
 			}
 		}
 	}
 	for wi := s.p.FieldWant[field]; wi < s.p.FieldWant[field+1]; wi++ {
-		if pl.fill(int(wi)) {
-			changed = true
-		}
+		pl.fill(int(wi), extra)
 	}
-	s.stats.Placed++
-	if !changed {
-		s.commit()
-		return false
-	}
-	if after := pl.objective(); after < before {
-		s.rollback()
-		s.stats.Undone++
-		return false
-	} else if after > before {
-		s.stats.Better++
-	}
-	s.commit()
-	return true
 }
 
 // objective is what place compares: the score less theta times the price of
@@ -83,35 +99,55 @@ func (pl *placer) objective() float64 {
 	return v
 }
 
+// rounds is how often a want's missing visits are looked for again: an
+// insertion can fail where an earlier one has pushed things about.
+const rounds = 4
+
 // fill adds visits of one want, as many as it lacks.
-func (pl *placer) fill(wi int) bool {
+func (pl *placer) fill(wi int, extra float64) {
 	s := pl.s
 	w := &s.p.Wants[wi]
-	lack := int(w.Visits) - len(s.of[wi])
-	if lack <= 0 || len(w.Scopes) == 0 {
-		return false
+	if len(w.Scopes) == 0 {
+		return
 	}
 	least := skipBelow * pl.mu[wi]
-	pl.gather(wi, w, least)
-	var mu float64
-	pl.picked, mu = pl.choose.choose(w, pl.all, lack, pl.picked[:0])
-	if len(pl.picked) < lack && least > 0 {
-		least = 0
-		pl.gather(wi, w, least)
-		pl.picked, mu = pl.choose.choose(w, pl.all, lack, pl.picked[:0])
+	if extra > 0 {
+		least = -extra
 	}
-	pl.mu[wi] = mu
-	done := 0
-	for k := range pl.picked {
-		if pl.putBack(wi, w, k) {
-			done++
+	pl.banned = pl.banned[:0]
+	for round := range rounds {
+		lack := int(w.Visits) - len(s.of[wi])
+		if lack <= 0 {
+			return
+		}
+		pl.gather(wi, w, least, extra)
+		var mu float64
+		pl.picked, mu = pl.choose.choose(w, pl.all, lack, pl.picked[:0])
+		if len(pl.picked) < lack && least > 0 {
+			least = 0
+			pl.gather(wi, w, least, extra)
+			pl.picked, mu = pl.choose.choose(w, pl.all, lack, pl.picked[:0])
+		}
+		if extra == 0 && round == 0 {
+			pl.mu[wi] = mu
+		}
+		done := 0
+		for k := range pl.picked {
+			if pl.putBack(wi, w, k) {
+				done++
+			} else {
+				pl.banned = append(pl.banned, pl.all[pl.picked[k]])
+			}
+		}
+		if done == len(pl.picked) {
+			return
 		}
 	}
-	return done > 0
 }
 
-// gather lists the want's spots over all telescopes and nights, by start.
-func (pl *placer) gather(wi int, w *model.Want, least float64) {
+// gather lists the want's spots over all telescopes and nights, by start, as
+// far as they are worth more than least, and adds extra to each.
+func (pl *placer) gather(wi int, w *model.Want, least, extra float64) {
 	pl.find.spots = pl.find.spots[:0]
 	pl.combos = pl.combos[:0]
 	for _, t := range w.Scopes {
@@ -137,10 +173,29 @@ func (pl *placer) gather(wi int, w *model.Want, least float64) {
 			pl.all = append(pl.all, sp)
 		}
 	}
-	if fixed := pl.s.startsOf(int32(wi)); len(fixed) > 0 {
+	if len(pl.banned) > 0 {
+		pl.all = slices.DeleteFunc(pl.all, pl.isBanned)
+	}
+	if len(pl.s.of[wi]) > 0 {
 		pl.all = slices.DeleteFunc(pl.all, func(sp spot) bool { return pl.s.tooNear(w, wi, sp) })
 	}
+	if extra != 0 {
+		for i := range pl.all {
+			pl.all[i].profit += extra
+		}
+	}
 	sortSpots(pl.all)
+}
+
+// isBanned reports whether a spot is one that failed before.
+func (pl *placer) isBanned(sp spot) bool {
+	for i := range pl.banned {
+		b := &pl.banned[i]
+		if b.scope == sp.scope && b.night == sp.night && b.start/pl.find.bin == sp.start/pl.find.bin && b.eject == sp.eject {
+			return true
+		}
+	}
+	return false
 }
 
 // tooNear reports whether a spot breaks the cadence with a visit that stays.
@@ -148,7 +203,7 @@ func (s *state) tooNear(w *model.Want, wi int, sp spot) bool {
 	same := int32(0)
 	for _, id := range s.of[wi] {
 		v := &s.visits[id]
-		if d := sp.start - v.start; d < w.GapMin && -d < w.GapMin {
+		if sp.start-v.late < w.Spacing && v.early-sp.start < w.Spacing {
 			return true
 		}
 		if v.night == sp.night {
@@ -230,17 +285,17 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 	// Cadence slack to the neighbours, half each.
 	lo, hi := int64(-maxShift), int64(maxShift)
 	if k > 0 {
-		lo = max(lo, -(sp.start-pl.all[pl.picked[k-1]].start-w.GapMin)/2)
+		lo = max(lo, -(sp.start-pl.all[pl.picked[k-1]].start-w.Spacing)/2)
 	}
 	if k+1 < len(pl.picked) {
-		hi = min(hi, (pl.all[pl.picked[k+1]].start-sp.start-w.GapMin)/2)
+		hi = min(hi, (pl.all[pl.picked[k+1]].start-sp.start-w.Spacing)/2)
 	}
 	for _, id := range s.of[wi] {
 		v := &s.visits[id]
-		if d := sp.start - v.start; v.fixed && d > 0 {
-			lo = max(lo, -(d - w.GapMin))
-		} else if v.fixed {
-			hi = min(hi, -d-w.GapMin)
+		if sp.start > v.start {
+			lo = max(lo, v.late+w.Spacing-sp.start)
+		} else {
+			hi = min(hi, v.early-w.Spacing-sp.start)
 		}
 	}
 	if lo > 0 || hi < 0 {
@@ -271,7 +326,7 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 				s.stats.Ejected++
 			}
 		}
-		early, late, ok := s.shiftWindow(w, j, part, len(parts) > 1, lo, hi)
+		early, late, ok := s.shiftWindow(w, j, part, parts, lo, hi)
 		if !ok || !s.insert(id, j, part, early, late) {
 			s.undoTo(mark)
 			s.stats.Refused++
@@ -285,28 +340,36 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 
 // shiftWindow bounds the start of a step: the legal window it was found in,
 // the cadence slack, and half of what the set's tolerances leave.
-func (s *state) shiftWindow(w *model.Want, j int, part spot, set bool, lo, hi int64) (early, late int64, ok bool) {
+func (s *state) shiftWindow(w *model.Want, j int, part spot, parts []spot, lo, hi int64) (early, late int64, ok bool) {
 	length := s.p.Length(&w.Steps[j], part.scope)
 	early, late, ok = s.legalStarts(w, part.scope, int(part.night), part.start, length)
 	if !ok {
 		return 0, 0, false
 	}
-	if set {
-		// Each step may move by a quarter of the least tolerance, and is put
-		// within half of it, so that no shifts together break one.
-		quarter := s.quarter(w)
-		lo, hi = max(lo, -quarter), min(hi, quarter)
+	if len(parts) > 1 {
+		// Half of the least tolerance to each of two steps, so that no two
+		// shifts together break one; a step that is off its ideal time gets
+		// less on the side it is off to.
+		half := s.half(w)
+		lo, hi = max(lo, -half), min(hi, half)
+		if j > 0 {
+			off := part.start - parts[j-1].start - w.Steps[j].After
+			lo, hi = max(lo, -half-min(off, 0)), min(hi, half-max(off, 0))
+		}
+		if lo > 0 || hi < 0 {
+			return 0, 0, false
+		}
 	}
 	return max(early, part.start+lo), min(late, part.start+hi), true
 }
 
-// quarter returns a quarter of the least tolerance of a set, us.
-func (s *state) quarter(w *model.Want) int64 {
+// half returns half of the least tolerance of a set, us.
+func (s *state) half(w *model.Want) int64 {
 	least := int64(math.MaxInt64)
 	for j := 1; j < len(w.Steps); j++ {
 		least = min(least, w.Steps[j].Tolerance)
 	}
-	return least / 4
+	return least / 2
 }
 
 // nextStep finds where step j of a set goes, given where the middle of the

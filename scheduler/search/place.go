@@ -134,6 +134,10 @@ func (f *finder) quality(s int64) float64 {
 	return (float64(f.row[k]) + u*(float64(f.row[k+1])-float64(f.row[k]))) / 255
 }
 
+// steep is the altitude above which azimuth turns too fast for a line between
+// frames, rad.
+const steep = 65 * math.Pi / 180
+
 // aim estimates the pointing at an instant, from the frames.
 func (f *finder) aim(us int64) mount.Pointing {
 	x := (model.Sec(us) - f.g.From) / f.g.Step
@@ -142,6 +146,10 @@ func (f *finder) aim(us int64) mount.Pointing {
 	f.know(k + 1)
 	u := x - float64(k)
 	a, b := &f.poses[k], &f.poses[k+1]
+	if a.Altitude > steep || b.Altitude > steep {
+		fr := f.s.p.Sky.Horizon(int(f.s.p.Scopes[f.scope].Site), model.Sec(us))
+		return f.s.sight(f.scope, &fr, f.c)
+	}
 	az := math.Remainder(b.Azimuth-a.Azimuth, 2*math.Pi)
 	ha := math.Remainder(b.HourAngle-a.HourAngle, 2*math.Pi)
 	return mount.Pointing{

@@ -54,7 +54,10 @@ type visit struct {
 	night  int32
 	alive  bool
 	fixed  bool  // held or done: never moved
+	born   int32 // place in the journal's born, or -1 when older than the transaction
 	start  int64 // of its first exposure
+	early  int64 // the first exposure's shift window
+	late   int64
 	credit int64 // of all its exposures
 }
 
@@ -90,11 +93,10 @@ func newState(p *model.Problem, price pricer) *state {
 	s.of = make([][]int32, len(p.Wants))
 	n := len(p.Survey.Fields)
 	s.got, s.wanted, s.bonus = make([]int32, n), make([]int32, n), make([]int64, n)
-	total, b := p.Survey.TotalWeight(), p.Survey.FinishBonus
 	for f := range n {
 		fd := &p.Survey.Fields[f]
 		s.wanted[f] = int32(p.Survey.Wanted(fd))
-		s.bonus[f] = int64(math.Round(scoreUnit * b * p.Survey.WeightOf(fd) / ((1 + b) * total)))
+		s.bonus[f] = int64(math.Round(scoreUnit * p.Bonus(f)))
 	}
 	return s
 }
