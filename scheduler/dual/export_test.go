@@ -1,0 +1,32 @@
+package dual
+
+// SetRates sets every price, in C per second, for the tests of the bound.
+func (a *Ascent) SetRates(rate func(scope, slot int) float64) {
+	n := a.prices.n
+	for i := range a.prices.rate {
+		a.prices.rate[i] = rate(i/n, i%n)
+	}
+	a.prices.integrate()
+}
+
+// SetMu sets the count multipliers from which the bound's search starts.
+func (a *Ascent) SetMu(mu func(want int) float64) {
+	for i := range a.oracle.Mu {
+		a.oracle.Mu[i] = mu(i)
+	}
+}
+
+// Prove makes the oracle prove, as Ceiling does.
+func (a *Ascent) Prove(width float64) {
+	a.oracle.Fine(width)
+	a.oracle.Refresh()
+}
+
+// WantBound bounds what one want can earn on its own at the current prices.
+func (a *Ascent) WantBound(want int) float64 {
+	b, _ := a.oracle.best(a.oracle.newScratch(), want, nil)
+	return b
+}
+
+// PricedValue is the rest of the ceiling: what the capacity is worth.
+func (a *Ascent) PricedValue() float64 { return a.capacityValue() - a.keepFreeValue() }
