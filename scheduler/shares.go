@@ -18,17 +18,7 @@ func shares(p *model.Problem, plan *model.Plan) []model.ShareOutcome {
 		time[sv.Fields[e.Field].Program] += s
 		all += s
 	}
-	longest := make([]float64, len(sv.Programs))
-	for i := range p.Wants {
-		w := &p.Wants[i]
-		for _, t := range w.Scopes {
-			var s float64
-			for k := range w.Steps {
-				s += model.Sec(p.Length(&w.Steps[k], t))
-			}
-			longest[w.Program] = max(longest[w.Program], s)
-		}
-	}
+	longest := p.LongestVisits()
 	out := make([]model.ShareOutcome, len(sv.Programs))
 	for i := range sv.Programs {
 		pr := &sv.Programs[i]

@@ -63,7 +63,6 @@ type conductor struct {
 }
 
 func (c *conductor) solve(seed uint64) *model.Outcome {
-	dual.Debug = Debug
 	ascent := dual.NewAscent(c.p)
 	for i, lv := range c.effort.levels {
 		phase := fmt.Sprintf("prices %d of %d", i+1, len(c.effort.levels))
@@ -74,11 +73,12 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	c.report(model.Progress{Phase: "ceiling"})
 	ceiling := ascent.Ceiling(c.effort.ceilingBin)
 	c.report(model.Progress{Phase: "ceiling", Done: 1, Total: 1, Ceiling: ceiling})
-	prices := ascent.Prices().List()
+	prices, kept, relaxed := ascent.Prices().List(), ascent.Keep(), false
 	ascent.Steer(c.ctx, c.effort.steer, func(step, of int, _ float64) {
 		c.report(model.Progress{Phase: "steering", Done: step, Total: of, Ceiling: ceiling})
 	})
 	s := search.New(c.p, ascent.Prices(), ascent.Oracle().Mu, seed)
+	s.SetRates(ascent.ShareRates())
 	s.Construct(c.ctx, c.effort.construct, func(done, of int) {
 		c.report(model.Progress{Phase: "construction", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
 	})
@@ -88,17 +88,6 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 			c.report(model.Progress{Phase: phase, Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
 		})
 	}
-	if Debug {
-		u := s.Use()
-		fmt.Printf("exposure %.0f h gap %.0f h idle %.0f h; ", u.Exposure/3600, u.Gap/3600, u.Idle/3600)
-		lim := 0
-		var mean float64
-		for _, pr := range ascent.Prices().List() {
-			mean += pr.PerHour
-			lim++
-		}
-		fmt.Printf("mean price per hour %.3e; coverage per open hour %.3e\n", mean/float64(lim), ceiling/((u.Exposure+u.Gap+u.Idle)/3600))
-	}
 	status := model.StepsDone
 	if err := c.ctx.Err(); err != nil {
 		status = model.Interrupted
@@ -106,11 +95,25 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 			status = model.TimeLimit
 		}
 	}
+	s.KeepShares(c.ctx, func(done, of int) {
+		c.report(model.Progress{Phase: "shares", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
+	})
 	plan := s.Plan()
+	told := shares(c.p, plan)
+	for i := range told {
+		if told[i].Breach > 0 {
+			ascent.Relax(int(told[i].Program))
+			relaxed = true
+		}
+	}
+	if relaxed {
+		// A plan out of its share bounds is compared with plans that need not
+		// keep them either.
+		ascent.Restore(kept)
+		ceiling = ascent.Ceiling(c.effort.ceilingBin)
+	}
 	return &model.Outcome{
 		Plan: plan, Coverage: s.Coverage(), Ceiling: ceiling, Status: status,
-		Prices: prices, Stats: s.Stats().List(), Shares: shares(c.p, plan),
+		Prices: prices, Stats: s.Stats().List(), Shares: told,
 	}
 }
-
-var Debug = false

@@ -30,7 +30,6 @@ func main() {
 	workers := flag.Int("workers", runtime.NumCPU(), "workers")
 	phases := flag.Bool("phases", false, "print when each phase ended")
 	profile := flag.String("cpuprofile", "", "file for a CPU profile")
-	flag.BoolVar(&scheduler.Debug, "debug", false, "")
 	flag.Parse()
 	if *profile != "" {
 		f, err := os.Create(*profile)

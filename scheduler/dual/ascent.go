@@ -44,6 +44,8 @@ type Ascent struct {
 	oracle *Oracle
 	scale  float64 // C per second: a typical price
 	loads  [][]float32
+	times  [][]float64 // [chunk][program] exposure time of the picks, s
+	shares *shareState
 	rank   []int // a shuffle of the fields, for sampling
 }
 
@@ -70,6 +72,11 @@ func NewAscent(p *model.Problem) *Ascent {
 		a.scale = 0.2 * value / time
 	}
 	a.rank = rand.New(rand.NewPCG(1, 0)).Perm(len(p.FieldWant) - 1)
+	a.shares = newShareState(p)
+	a.times = make([][]float64, chunks)
+	for i := range a.times {
+		a.times[i] = make([]float64, len(p.Survey.Programs))
+	}
 	a.loads = make([][]float32, chunks)
 	for i := range a.loads {
 		a.loads[i] = make([]float32, len(pr.rate))
@@ -112,6 +119,8 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 		for _, g := range groups {
 			g.move(load)
 		}
+		a.shares.move(a.p, a.programTime(), eta*a.scale)
+		a.shares.rates(a.p, a.oracle.Share)
 		for s, c := range a.prices.capacity {
 			if c <= 0 {
 				continue
@@ -122,17 +131,28 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 			}
 			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.scale*d)
 		}
-		if Debug {
-			var l, c, r float64
-			for s, x := range a.prices.capacity {
-				l += load[s]
-				c += x
-				r += x * a.prices.rate[s]
-			}
-			println(step, int(l/3600), int(c/3600), "capvalue", int(1e6*r), "bound", int(1e6*(bound*float64(lv.Sample)+r)))
-		}
 		if progress != nil {
-			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue())
+			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue()+a.shares.slack())
+		}
+	}
+	a.prices.integrate()
+}
+
+// Kept is a state of the prices that Restore goes back to.
+type Kept struct{ rate, mu []float64 }
+
+// Keep returns the present prices and count multipliers.
+func (a *Ascent) Keep() Kept {
+	return Kept{append([]float64(nil), a.prices.rate...), append([]float64(nil), a.oracle.Mu...)}
+}
+
+// Restore goes back to kept prices, and to the least gaps that a proof needs.
+func (a *Ascent) Restore(k Kept) {
+	copy(a.prices.rate, k.rate)
+	copy(a.oracle.Mu, k.mu)
+	for t := range a.oracle.shapes {
+		for i := range a.oracle.shapes[t] {
+			a.oracle.shapes[t][i].busy = a.oracle.shapes[t][i].length + a.p.Scopes[t].LeastGap
 		}
 	}
 	a.prices.integrate()
@@ -182,11 +202,12 @@ func (a *Ascent) sweep(sample, offset int) float64 {
 		defer pool.put(sc)
 		load := a.loads[c]
 		clear(load)
+		clear(a.times[c])
 		for f := c * fields / chunks; f < (c+1)*fields/chunks; f++ {
 			if a.rank[f]%sample != offset {
 				continue
 			}
-			sums[c] += o.field(sc, f, func(wi int, picks []pick) { a.addLoad(load, wi, picks) })
+			sums[c] += o.field(sc, f, func(wi int, picks []pick) { a.addLoad(c, wi, picks) })
 		}
 	})
 	var sum float64
@@ -196,8 +217,20 @@ func (a *Ascent) sweep(sample, offset int) float64 {
 	return sum
 }
 
+// programTime sums the picks' exposure time by program.
+func (a *Ascent) programTime() []float64 {
+	out := make([]float64, len(a.p.Survey.Programs))
+	for _, t := range a.times {
+		for i, x := range t {
+			out[i] += x
+		}
+	}
+	return out
+}
+
 // addLoad adds the time of the picks to the slots.
-func (a *Ascent) addLoad(load []float32, wi int, picks []pick) {
+func (a *Ascent) addLoad(chunk, wi int, picks []pick) {
+	load := a.loads[chunk]
 	w := &a.p.Wants[wi]
 	for i := range picks {
 		pk := &picks[i]
@@ -207,6 +240,7 @@ func (a *Ascent) addLoad(load []float32, wi int, picks []pick) {
 				s += w.Steps[k].After
 			}
 			sh := a.oracle.shapes[pk.scope][a.oracle.shapeOf[a.oracle.kinds[wi][k]][pk.scope]]
+			a.times[chunk][w.Program] += model.Sec(sh.length)
 			for t, end := s, s+sh.busy; t < end; {
 				slot := floorDiv(t, a.prices.slot)
 				next := min(end, (slot+1)*a.prices.slot)
@@ -339,5 +373,3 @@ func newPool(workers int, make_ func() *scratch) *pool {
 
 func (p *pool) get() *scratch  { return <-p.free }
 func (p *pool) put(s *scratch) { p.free <- s }
-
-var Debug bool

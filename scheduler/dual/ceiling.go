@@ -18,7 +18,7 @@ import (
 func (a *Ascent) Ceiling(width float64) float64 {
 	a.oracle.Fine(width)
 	a.oracle.Refresh()
-	sum := a.sweep(1, 0) + a.capacityValue() - a.keepFreeValue()
+	sum := a.sweep(1, 0) + a.capacityValue() - a.keepFreeValue() + a.shares.slack()
 	return math.Min(1, sum*(1+1e-9)+1e-12)
 }
 

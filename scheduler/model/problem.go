@@ -197,6 +197,23 @@ func (p *Problem) addWants(f int, total float64) {
 	}
 }
 
+// LongestVisits returns, by program, the longest scaled exposure time one
+// visit can have, s.
+func (p *Problem) LongestVisits() []float64 {
+	out := make([]float64, len(p.Survey.Programs))
+	for i := range p.Wants {
+		w := &p.Wants[i]
+		for _, t := range w.Scopes {
+			var s float64
+			for k := range w.Steps {
+				s += Sec(p.Length(&w.Steps[k], t))
+			}
+			out[w.Program] = max(out[w.Program], s)
+		}
+	}
+	return out
+}
+
 // setSpan returns the longest a set can last, us: two sets of a demand on one
 // field must not overlap.
 func (p *Problem) setSpan(w *Want) int64 {

@@ -14,6 +14,7 @@ type journal struct {
 	died   []int32 // visits that left
 	born   []int32 // visits that came
 	score  int64
+	time   []int64
 }
 
 type savedNight struct {
@@ -31,6 +32,7 @@ func (s *state) begin() {
 	clear(s.undo.marked)
 	s.undo.died, s.undo.born = s.undo.died[:0], s.undo.born[:0]
 	s.undo.score = s.score
+	s.undo.time = append(s.undo.time[:0], s.time...)
 }
 
 // save keeps a night's list before its first change in the transaction.
@@ -82,6 +84,7 @@ func (s *state) rollback() {
 	s.undo.active = false
 	s.free = append(s.free, s.undo.born...)
 	s.score = s.undo.score
+	copy(s.time, s.undo.time)
 }
 
 // sync copies starts and credits of a night's entries into the visits.
@@ -141,6 +144,7 @@ func (s *state) remove(id int32) {
 	for i := range n.list {
 		if n.list[i].visit == id {
 			s.score -= n.list[i].credit
+			s.time[s.p.Wants[v.want].Program] -= n.list[i].length
 			continue
 		}
 		out = append(out, n.list[i])
@@ -190,6 +194,7 @@ func (s *state) insert(id int32, step int, sp spot, early, late int64) bool {
 	copy(n.list[i+1:], n.list[i:])
 	n.list[i] = e
 	s.score += e.credit
+	s.time[w.Program] += e.length
 	ok := s.settle(v.scope, n, i)
 	s.refresh(v.scope, n)
 	if !ok || s.overBudget(v.scope, v.night, n) {
@@ -311,11 +316,14 @@ type mark struct {
 	index      int
 	died, born int
 	score      int64
+	time       []int64
 }
 
 // mark remembers one telescope-night, all that a single insertion touches.
 func (s *state) mark(scope, nightIndex int32) mark {
-	m := mark{int(scope)*s.p.Nights + int(nightIndex), len(s.undo.died), len(s.undo.born), s.score}
+	m := mark{int(scope)*s.p.Nights + int(nightIndex), len(s.undo.died), len(s.undo.born), s.score, s.timeThen}
+	s.timeThen = append(s.timeThen[:0], s.time...)
+	m.time = s.timeThen
 	s.spare = append(s.spare[:0], s.nights[m.index].list...)
 	return m
 }
@@ -340,4 +348,5 @@ func (s *state) undoTo(m mark) {
 	s.refresh(int32(m.index/s.p.Nights), n)
 	s.sync(n)
 	s.score = m.score
+	copy(s.time, m.time)
 }

@@ -96,6 +96,9 @@ func (pl *placer) objective() float64 {
 	if s.theta > 0 {
 		v -= s.theta * s.priced
 	}
+	for p, r := range s.rates {
+		v += r * model.Sec(s.time[p])
+	}
 	return v
 }
 

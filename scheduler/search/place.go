@@ -34,6 +34,7 @@ type finder struct {
 	known  []bool
 	spots  []spot
 	value  float64 // of a step at quality 1
+	extra  float64 // of its exposure time, for the shares
 	least  float64 // C: spots not above are of no use
 	w      *model.Want
 	step   int
@@ -75,7 +76,8 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	st := &w.Steps[step]
 	class := s.p.Scopes[scope].Class
 	f.length = s.p.Length(st, scope)
-	limit := f.value * s.p.Shelf.Top(class, nightIndex, st.Row)
+	f.extra = s.rates[w.Program] * model.Sec(f.length)
+	limit := f.value*s.p.Shelf.Top(class, nightIndex, st.Row) + f.extra
 	if s.theta > 0 {
 		limit -= s.theta * s.least[int(scope)*s.p.Nights+nightIndex] * model.Sec(f.length)
 	}
@@ -208,6 +210,9 @@ func (f *finder) position(p, next int, lo, hi int64) {
 		}
 		eject = e.visit
 		lost = float64(v.credit) / scoreUnit
+		if r := f.s.rates[f.s.p.Wants[e.want].Program]; r != 0 {
+			lost += r * f.s.visitSeconds(v)
+		}
 		if field := f.s.p.Wants[e.want].Field; f.s.got[field] == f.s.wanted[field] {
 			lost += float64(f.s.bonus[field]) / scoreUnit
 		}
@@ -223,12 +228,12 @@ func (f *finder) position(p, next int, lo, hi int64) {
 	q := f.quality(seed)
 	if next > p {
 		rate := f.s.theta * f.s.price.At(int(f.scope), seed)
-		if f.value*q*1.02-lost-rate*model.Sec(need+f.lg-free) <= f.least {
+		if f.value*q*1.02+f.extra-lost-rate*model.Sec(need+f.lg-free) <= f.least {
 			return
 		}
 	} else if p > 0 && next < m {
 		// Between neighbours: quality hardly changes inside the gap.
-		if span := list[next].start - list[p-1].end(); span < f.bin && f.value*q*1.02 <= f.least {
+		if span := list[next].start - list[p-1].end(); span < f.bin && f.value*q*1.02+f.extra <= f.least {
 			return
 		}
 		if n.last[next]-n.first[p-1]-list[p-1].length < f.length+2*f.lg {
@@ -236,6 +241,16 @@ func (f *finder) position(p, next int, lo, hi int64) {
 		}
 	}
 	f.weigh(p, next, from, to, seed, free, lost, eject)
+}
+
+// visitSeconds returns a visit's exposure time.
+func (s *state) visitSeconds(v *visit) float64 {
+	w := &s.p.Wants[v.want]
+	var t float64
+	for i := range w.Steps {
+		t += model.Sec(s.p.Length(&w.Steps[i], v.scope))
+	}
+	return t
 }
 
 // weigh works out gaps and pushes and notes the worth of the position.
@@ -295,7 +310,7 @@ func (f *finder) note(s int64, p, next int, left, right, used int64, lost float6
 	if q < f.w.MinQuality {
 		return
 	}
-	profit := f.value*q - lost - f.s.theta*f.s.price.At(int(f.scope), s)*model.Sec(used)
+	profit := f.value*q + f.extra - lost - f.s.theta*f.s.price.At(int(f.scope), s)*model.Sec(used)
 	if profit <= f.least {
 		return
 	}

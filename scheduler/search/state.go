@@ -63,22 +63,25 @@ type visit struct {
 
 // state is the search's own picture of a plan. Only one goroutine changes it.
 type state struct {
-	p      *model.Problem
-	price  pricer
-	theta  float64 // weight of the price of time in a move's worth
-	nights []night // [scope * p.Nights + night]
-	visits []visit
-	free   []int32   // dead visits to be used again
-	of     [][]int32 // [want] its visits, unordered
-	score  int64     // sum of credits and bonuses
-	got    []int32   // [field] visits got, for the bonus
-	bonus  []int64   // [field] bonus when every visit is got, 1e-12 of C
-	wanted []int32   // [field]
-	stats  Stats
-	undo   journal
-	spare  []entry   // the marked night's list
-	least  []float64 // least price in each telescope-night's open time, C per second
-	priced float64   // sum of the nights' priced time, C
+	p        *model.Problem
+	price    pricer
+	theta    float64 // weight of the price of time in a move's worth
+	nights   []night // [scope * p.Nights + night]
+	visits   []visit
+	free     []int32   // dead visits to be used again
+	of       [][]int32 // [want] its visits, unordered
+	score    int64     // sum of credits and bonuses
+	got      []int32   // [field] visits got, for the bonus
+	bonus    []int64   // [field] bonus when every visit is got, 1e-12 of C
+	wanted   []int32   // [field]
+	stats    Stats
+	undo     journal
+	spare    []entry   // the marked night's list
+	timeThen []int64   // time when it was marked
+	rates    []float64 // [program] worth of a second of exposure beside its credit, C: shares
+	time     []int64   // [program] exposure time in the plan, us
+	least    []float64 // least price in each telescope-night's open time, C per second
+	priced   float64   // sum of the nights' priced time, C
 }
 
 // pricer gives the price of time; the dual's prices do.
@@ -91,6 +94,7 @@ func newState(p *model.Problem, price pricer) *state {
 	s := &state{p: p, price: price, least: price.Least()}
 	s.nights = make([]night, len(p.Scopes)*p.Nights)
 	s.of = make([][]int32, len(p.Wants))
+	s.rates, s.time = make([]float64, len(p.Survey.Programs)), make([]int64, len(p.Survey.Programs))
 	n := len(p.Survey.Fields)
 	s.got, s.wanted, s.bonus = make([]int32, n), make([]int32, n), make([]int64, n)
 	for f := range n {

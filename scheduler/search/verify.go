@@ -41,6 +41,18 @@ func (s *state) verify() {
 			score += s.bonus[f]
 		}
 	}
+	time := make([]int64, len(s.time))
+	for i := range s.nights {
+		for k := range s.nights[i].list {
+			e := &s.nights[i].list[k]
+			time[s.p.Wants[e.want].Program] += e.length
+		}
+	}
+	for p := range time {
+		if time[p] != s.time[p] {
+			panic(fmt.Sprintf("search: program %d has %d us of exposure, %d noted", p, time[p], s.time[p]))
+		}
+	}
 	if score != s.score {
 		panic(fmt.Sprintf("search: score is %d, the recount %d", s.score, score))
 	}

@@ -1,0 +1,109 @@
+package dual
+
+import (
+	"math"
+
+	"nightwright/scheduler/model"
+)
+
+// Shares in the relaxation. For a program p with exposure time T_p of all the
+// planned time T, and t_p the longest a visit of it can expose,
+//
+//	min:  T_p - min T + t_p >= 0      multiplier low[p]  >= 0
+//	max:  max T + t_p - T_p >= 0      multiplier high[p] >= 0
+//
+// hold "to within one visit". Their Lagrangian adds to each second of exposure
+// of program q
+//
+//	sum_p low[p] ([q = p] - min_p) + high[p] (max_p - [q = p])
+//
+// and the constant sum_p (low[p] + high[p]) t_p.
+type shareState struct {
+	low, high []float64 // C per second
+	longest   []float64 // t_p, s
+	stepLow   []float64
+	stepHigh  []float64
+	oldLow    []float64
+	oldHigh   []float64
+	any       bool
+}
+
+func newShareState(p *model.Problem) *shareState {
+	n := len(p.Survey.Programs)
+	s := &shareState{
+		low: make([]float64, n), high: make([]float64, n), longest: p.LongestVisits(),
+		stepLow: make([]float64, n), stepHigh: make([]float64, n),
+		oldLow: make([]float64, n), oldHigh: make([]float64, n),
+	}
+	for i := range n {
+		s.stepLow[i], s.stepHigh[i] = 2, 2
+		pr := &p.Survey.Programs[i]
+		s.any = s.any || pr.ShareMin > 0 || pr.ShareMax < 1
+	}
+	return s
+}
+
+// move changes the multipliers after a step that planned the given exposure
+// time by program, s.
+func (s *shareState) move(p *model.Problem, time []float64, size float64) {
+	var all float64
+	for _, t := range time {
+		all += t
+	}
+	if !s.any || all == 0 {
+		return
+	}
+	for i := range time {
+		pr := &p.Survey.Programs[i]
+		if pr.ShareMin > 0 {
+			push(&s.low[i], &s.stepLow[i], &s.oldLow[i], pr.ShareMin-time[i]/all, size)
+		}
+		if pr.ShareMax < 1 {
+			push(&s.high[i], &s.stepHigh[i], &s.oldHigh[i], time[i]/all-pr.ShareMax, size)
+		}
+	}
+}
+
+// push moves one multiplier by its relative breach, with a step of its own
+// that shrinks when the breach changes sign.
+func push(m, step, old *float64, breach, size float64) {
+	if breach**old < 0 {
+		*step *= 0.6
+	}
+	*old = breach
+	*m = math.Max(0, *m+size**step*breach)
+}
+
+// rates writes the value a second of exposure has beside its coverage.
+func (s *shareState) rates(p *model.Problem, out []float64) {
+	for q := range out {
+		out[q] = 0
+		for i := range s.low {
+			pr := &p.Survey.Programs[i]
+			out[q] += s.high[i]*pr.ShareMax - s.low[i]*pr.ShareMin
+			if i == q {
+				out[q] += s.low[i] - s.high[i]
+			}
+		}
+	}
+}
+
+// slack is the constant of the Lagrangian.
+func (s *shareState) slack() float64 {
+	var sum float64
+	for i := range s.low {
+		sum += (s.low[i] + s.high[i]) * s.longest[i]
+	}
+	return sum
+}
+
+// Relax takes the multipliers of a program's share bounds out, for a ceiling
+// of plans that need not keep them.
+func (a *Ascent) Relax(program int) {
+	a.shares.low[program], a.shares.high[program] = 0, 0
+	a.shares.rates(a.p, a.oracle.Share)
+}
+
+// ShareRates returns what a second of exposure of each program is worth beside
+// its coverage, C per second.
+func (a *Ascent) ShareRates() []float64 { return append([]float64(nil), a.oracle.Share...) }
