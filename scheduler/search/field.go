@@ -293,6 +293,7 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 	if k+1 < len(pl.picked) {
 		hi = min(hi, (pl.all[pl.picked[k+1]].start-sp.start-w.Spacing)/2)
 	}
+	same := int32(0)
 	for _, id := range s.of[wi] {
 		v := &s.visits[id]
 		if sp.start > v.start {
@@ -300,8 +301,11 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 		} else {
 			hi = min(hi, v.early-w.Spacing-sp.start)
 		}
+		if v.night == sp.night {
+			same++
+		}
 	}
-	if lo > 0 || hi < 0 {
+	if lo > 0 || hi < 0 || w.PerNight > 0 && same >= w.PerNight {
 		return false
 	}
 	mark := s.mark(sp.scope, sp.night)

@@ -114,14 +114,31 @@ func (s *state) sight(scope int32, fr *visibility.Frame, c ephemeris.Vec) mount.
 	return mount.Pointing{Altitude: alt, Azimuth: az}
 }
 
-// gapGuard is added to every computed gap, us: the audit works gaps out from
-// the exact path, and its directions differ by up to 0.1".
-const gapGuard = 1000
+// gapGuard is added to every computed gap, us, for rounding; axisGuard, rad, is
+// how far an axis' end may be from where the audit has it, on the sky: it works
+// gaps out from the exact path, and directions differ by up to 0.05".
+const (
+	gapGuard  = 1000
+	axisGuard = 2.5e-7
+)
 
 // gapBetween returns the needed gap from a to b, us, on a telescope.
 func (s *state) gapBetween(scope int32, a, b *entry) int64 {
 	t := s.p.Scopes[scope].Telescope
-	return model.MicroCeil(mount.Gap(t, a.to, b.at, int(a.filter), int(b.filter), a.east, b.east)) + gapGuard
+	gap := mount.Gap(t, a.to, b.at, int(a.filter), int(b.filter), a.east, b.east)
+	return model.MicroCeil(gap+slewGuard(t, &a.to, &b.at)) + gapGuard
+}
+
+// slewGuard is how much longer the audit may find a slew, s: near the zenith
+// (of an equatorial mount: the pole) an axis has far to go for an arc second.
+func slewGuard(t *survey.Telescope, a, b *mount.Pointing) float64 {
+	turn, ca, cb := b.Azimuth-a.Azimuth, math.Cos(a.Altitude), math.Cos(b.Altitude)
+	if t.Mount == survey.Equatorial {
+		turn, ca, cb = b.HourAngle-a.HourAngle, math.Cos(a.Declination), math.Cos(b.Declination)
+	}
+	turn = math.Abs(math.Remainder(turn, 2*math.Pi))
+	more := turn + axisGuard*(1/math.Max(ca, 1e-6)+1/math.Max(cb, 1e-6))
+	return mount.AxisTime(more, t.Slew.Rate, t.Slew.Acceleration) - mount.AxisTime(turn, t.Slew.Rate, t.Slew.Acceleration)
 }
 
 // set puts an entry at a start: pointing, quality, credit and slope from the
