@@ -57,7 +57,7 @@ func TestTextHasWhatIsNeeded(t *testing.T) {
 	}
 	text := b.String()
 	for _, want := range []string{
-		"telescope C1", "2027-03-09", "Cinder Ridge", "04:00:00  21:00:00 -07:00", "LST", "E000", "10:00:00.00 -05:00:00.0", "60 s",
+		"telescope C1", "2027-03-09", "Cinder Ridge", "04:00:00.0  21:00:00 -07:00", "LST", "E000", "10:00:00.00 -05:00:00.0", "60 s",
 		"FILTER g -> r", "standards", "focus", "[1/2]", "airmass", "Moon", "Sun", "emergency stop", "interlock", "UT1-UTC", "come first",
 	} {
 		if !strings.Contains(text, want) {

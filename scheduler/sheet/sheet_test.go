@@ -141,7 +141,7 @@ func TestClocksChange(t *testing.T) {
 		t.Errorf("local times %s; want each with its own offset", got)
 	}
 	var b strings.Builder
-	if err := s.WriteText(&b); err != nil || !strings.Contains(b.String(), "from -07:00 to -06:00 at 09:00:00 UTC") || !strings.Contains(b.String(), "work by UTC") {
+	if err := s.WriteText(&b); err != nil || !strings.Contains(b.String(), "from -07:00 to -06:00 at 09:00:00.0 UTC") || !strings.Contains(b.String(), "work by UTC") {
 		t.Errorf("%v\n%s", err, b.String())
 	}
 	if s := f.sheet(t, "C1", 1); s.ClockChange != 0 {

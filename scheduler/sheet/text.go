@@ -39,8 +39,8 @@ func (s *Sheet) WriteText(w io.Writer) error {
 	if s.Totals.Exposures == 0 {
 		p("Nothing is planned for this night.")
 	} else {
-		p("   #  UTC       local            LST    filter    exposure  field")
-		p("      gap before  latest start      right ascension, declination  (ICRS J2000)")
+		p("   #  UTC         local            LST    filter    exposure  field")
+		p("      gap before  latest start        right ascension, declination  (ICRS J2000)")
 		p("      alt, az, airmass and degrees from the Moon at the exposure's middle")
 		p("%s", strings.Repeat("-", width))
 	}
@@ -184,8 +184,10 @@ func (l *Line) stateNote() string {
 	return "  " + l.Visit.State
 }
 
+// clock gives UTC to a tenth of a second, rounded down, so that no latest
+// start shows late.
 func clock(unix float64) string {
-	return time.UnixMicro(int64(math.Round(unix * 1e6))).UTC().Format("15:04:05")
+	return time.UnixMicro(int64(math.Round(unix * 1e6))).UTC().Format("15:04:05.0")
 }
 
 // localClock gives local time with its offset from UTC.

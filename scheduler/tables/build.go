@@ -126,7 +126,7 @@ func (b *builder) visitRows() []VisitRow {
 			Demand: b.demand(s).Name, Filter: b.sv.Filters[b.step(s).Filter].Name,
 			Site: b.sv.Sites[t.Site].Name, Telescope: t.Name, Night: int32(b.sv.FirstNight) + s.Night,
 			Start: s.Start, End: s.End, Exposure: float64(s.End-s.Start) / 1e6, GapBefore: l.gap,
-			RA: degrees(f.RA), Dec: degrees(f.Dec), Altitude: degrees(l.star.Altitude), Azimuth: degrees(l.star.Azimuth),
+			RA: written(f.RA), Dec: written(f.Dec), Altitude: degrees(l.star.Altitude), Azimuth: degrees(l.star.Azimuth),
 			Airmass: l.airmass, SunAltitude: degrees(l.sun), MoonAltitude: degrees(l.moon), MoonSeparation: degrees(l.separation),
 			SkyMagnitude: l.sky, Quality: l.quality, State: s.State.String(),
 		}
@@ -147,6 +147,11 @@ func (b *builder) visitRows() []VisitRow {
 }
 
 func degrees(x float64) float64 { return x * (180 / math.Pi) }
+
+// written gives a position's angle back as a survey file has it: the detour
+// by radians costs its last digits, which this rounds away (1e-10 deg is less
+// than a millionth of an arc second).
+func written(x float64) float64 { return math.Round(degrees(x)*1e10) / 1e10 }
 
 // errStopped is ctx's error, told with where it struck.
 func errStopped(ctx context.Context) error {

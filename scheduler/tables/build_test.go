@@ -103,6 +103,15 @@ func TestGapsAreThoseBetweenTrueDirections(t *testing.T) {
 	}
 }
 
+// TestPositionsComeBackAsWritten: degrees from a file go through radians.
+func TestPositionsComeBackAsWritten(t *testing.T) {
+	for _, x := range []float64{93.8179, 10.123456789, -0.0001, 359.9999999, 45.1, -89.87654321} {
+		if got := written(x / 180 * math.Pi); got != x {
+			t.Errorf("%s came back as %s", Float(x), Float(got))
+		}
+	}
+}
+
 func TestCreditsAndBonusesSumToCoverage(t *testing.T) {
 	f, _, pt := built(t)
 	s := pt.Summary

@@ -39,7 +39,7 @@ func (b *builder) fieldRow(field int, u *usable) FieldRow {
 	f := &b.sv.Fields[field]
 	row := FieldRow{
 		Field: f.Name, Program: b.sv.Programs[f.Program].Name, Weight: b.sv.WeightOf(f),
-		RA: degrees(f.RA), Dec: degrees(f.Dec), VisitsWanted: b.tally.wanted[field],
+		RA: written(f.RA), Dec: written(f.Dec), VisitsWanted: b.tally.wanted[field],
 		Coverage: b.tally.sum[field] / float64(b.tally.wanted[field]), UsableHours: u.hours(field),
 	}
 	if b.tally.got[field] == b.tally.wanted[field] {

@@ -187,7 +187,7 @@ func TestFlippedBytesAreFound(t *testing.T) {
 	flips := 0
 	for name, text := range snapshot(t, dir) {
 		at := filepath.Join(dir, name)
-		for i := 0; i < len(text); i += 1 + len(text)/300 {
+		for i := 0; i < len(text); i += 1 + len(text)/200 {
 			bad := []byte(text)
 			bad[i] ^= 1 << (flips % 8)
 			flips++
@@ -216,7 +216,7 @@ func TestFlippedBytesAreFound(t *testing.T) {
 			t.Fatal(err)
 		}
 	}
-	if _, err := ReadFolder(dir); err != nil || flips < 1500 {
+	if _, err := ReadFolder(dir); err != nil || flips < 1200 {
 		t.Errorf("%d flips; at the end %v", flips, err)
 	}
 }

@@ -29,12 +29,29 @@ func ReadFolder(dir string) (*PlanTables, error) {
 	if err != nil {
 		return nil, err
 	}
-	pt := &PlanTables{Summary: *s}
-	if err := pt.readTables(dir); err != nil {
+	// All checksums first: damaged bytes never reach the Parquet library.
+	files, err := readTables(dir, s)
+	if err != nil {
 		return nil, err
 	}
-	_, err = readSurvey(dir, s)
-	return pt, err
+	if _, err := readSurvey(dir, s); err != nil {
+		return nil, err
+	}
+	pt := &PlanTables{Summary: *s}
+	for _, part := range pt.parts() {
+		f, ok := files[part.name]
+		if !ok {
+			continue
+		}
+		rows, err := part.decode(f.name, f.data)
+		if err != nil {
+			return nil, err
+		}
+		if int64(rows) != f.rows {
+			return nil, fmt.Errorf("%s: it has %d rows; want %d, as %s says", f.name, rows, f.rows, summaryName)
+		}
+	}
+	return pt, nil
 }
 
 // standing returns where the folder is: in its place, or aside when a
@@ -59,35 +76,37 @@ func isDir(name string) bool {
 	return err == nil && info.IsDir()
 }
 
-func (p *PlanTables) readTables(dir string) error {
-	listed := p.Summary.Tables
-	for _, part := range p.parts() {
+// tableFile is a table's file, verified but not yet decoded.
+type tableFile struct {
+	name string
+	data []byte
+	rows int64 // as the summary says
+}
+
+// readTables reads the tables that a summary lists, which must be those of a
+// plan in their order.
+func readTables(dir string, s *Summary) (map[string]tableFile, error) {
+	listed, files := s.Tables, map[string]tableFile{}
+	for _, part := range new(PlanTables).parts() {
 		file := part.name + suffix
 		if len(listed) == 0 || listed[0].Name != file {
 			if part.must {
-				return fmt.Errorf("%s: table %s is not listed in its turn; want all tables of a plan", filepath.Join(dir, summaryName), file)
+				return nil, fmt.Errorf("%s: table %s is not listed in its turn; want all tables of a plan", filepath.Join(dir, summaryName), file)
 			}
 			continue
 		}
-		sum := listed[0]
-		listed = listed[1:]
 		name := filepath.Join(dir, file)
-		data, err := readSummed(name, sum.Bytes, sum.SHA256)
+		data, err := readSummed(name, listed[0].Bytes, listed[0].SHA256)
 		if err != nil {
-			return err
+			return nil, err
 		}
-		rows, err := part.decode(name, data)
-		if err != nil {
-			return err
-		}
-		if int64(rows) != sum.Rows {
-			return fmt.Errorf("%s: it has %d rows; want %d, as %s says", name, rows, sum.Rows, summaryName)
-		}
+		files[part.name] = tableFile{name, data, listed[0].Rows}
+		listed = listed[1:]
 	}
 	if len(listed) > 0 {
-		return fmt.Errorf("%s: it lists %q, which is no table of a plan; want the file as it was written", filepath.Join(dir, summaryName), listed[0].Name)
+		return nil, fmt.Errorf("%s: it lists %q, which is no table of a plan; want the file as it was written", filepath.Join(dir, summaryName), listed[0].Name)
 	}
-	return nil
+	return files, nil
 }
 
 // ReadSurvey returns the survey files that a plan folder keeps, verified.

@@ -43,7 +43,7 @@ func kindOf[T any](t Table[T]) kind {
 	return kind{
 		name: t.Name, columns: t.Columns(), schema: parquet.SchemaOf(new(T)),
 		trip: func(rt *rapid.T) {
-			rows := rapid.SliceOfN(draw, 0, 40).Draw(rt, "rows")
+			rows := rapid.SliceOfN(draw, 0, 15).Draw(rt, "rows")
 			data, err := t.Encode(rows)
 			if err != nil {
 				rt.Fatal(err)
@@ -265,11 +265,12 @@ func TestReaderRefusesOtherSchemas(t *testing.T) {
 	}
 }
 
-// TestDamagedBytesNeverPanic flips bytes all over each kind of table; what is
-// read then may be wrong, for the checksum is ReadFolder's affair.
+// TestDamagedBytesNeverPanic flips each byte of tables that have every type of
+// column between them; what is read then may be wrong, for the checksum is
+// ReadFolder's affair.
 func TestDamagedBytesNeverPanic(t *testing.T) {
-	for _, k := range kinds() {
-		data := k.sample(8)
+	for _, k := range []kind{kindOf(Fields), kindOf(Prices), kindOf(Grid)} {
+		data := k.sample(5)
 		refused := 0
 		for at := range data {
 			bad := slices.Clone(data)
