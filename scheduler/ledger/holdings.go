@@ -145,8 +145,11 @@ func (l *Ledger) scanWith(query func(context.Context, ...any) (*sql.Rows, error)
 	return out, l.explain(rows.Err())
 }
 
-// LossRows returns the rows about time up to an entry (0: all), in the order in
-// which they were made.
+// Now stands for the last entry, whichever it is.
+const Now int64 = math.MaxInt64
+
+// LossRows returns the rows about time up to an entry (Now: all), in the order
+// in which they were made.
 func (l *Ledger) LossRows(ctx context.Context, upTo int64) ([]Loss, error) {
 	if l.empty() {
 		return nil, nil
@@ -155,7 +158,7 @@ func (l *Ledger) LossRows(ctx context.Context, upTo int64) ([]Loss, error) {
 }
 
 // Losses returns the lost time of each telescope of a survey as it stood after
-// an entry (0: as it stands now), for constraints.NewCalendar: ascending and
+// an entry (Now: as it stands now), for constraints.NewCalendar: ascending and
 // disjoint, UTC Unix seconds. nil: no time was lost.
 func (l *Ledger) Losses(ctx context.Context, sv *survey.Survey, upTo int64) ([][]visibility.Interval, error) {
 	rows, err := l.LossRows(ctx, upTo)

@@ -147,7 +147,7 @@ func (c *recording) load(ctx context.Context, tx *sql.Tx, b *Batch) error {
 		}
 	}
 	if time {
-		list, err := c.l.losses(ctx, tx, 0)
+		list, err := c.l.losses(ctx, tx, Now)
 		if err != nil {
 			return err
 		}

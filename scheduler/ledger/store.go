@@ -153,11 +153,8 @@ func (l *Ledger) records(ctx context.Context, q asker, where string, args ...any
 	return out, l.explain(rows.Err())
 }
 
-// losses reads the rows about time up to an entry (0: all), in their order.
+// losses reads the rows about time up to an entry, in their order.
 func (l *Ledger) losses(ctx context.Context, q asker, upTo int64) ([]Loss, error) {
-	if upTo == 0 {
-		upTo = math.MaxInt64
-	}
 	rows, err := q.QueryContext(ctx, `SELECT x.entry, n.source, x.row, x.what, s.name, coalesce(t.name, ''), x.start_utc, x.end_utc, x.cause, x.why
 FROM losses x JOIN entries n ON n.entry = x.entry JOIN names s ON s.id = x.site LEFT JOIN names t ON t.id = x.telescope
 WHERE x.entry <= ? ORDER BY x.id`, upTo)
