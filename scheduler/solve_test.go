@@ -106,7 +106,7 @@ func TestPlansOfRandomSurveysAreLegal(t *testing.T) {
 		if d := c - o.Coverage; d > 1e-4 || d < -1e-4 {
 			t.Errorf("seed %d: coverage %.9f by the search, %.9f by the judge", seed, o.Coverage, c)
 		}
-		if c > o.Ceiling || o.Coverage > o.Ceiling+1e-6 {
+		if !t.Failed() && (c > o.Ceiling || o.Coverage > o.Ceiling+1e-6) {
 			t.Errorf("seed %d: coverage %.9f (the search's %.9f) is over the ceiling %.9f", seed, c, o.Coverage, o.Ceiling)
 		}
 		if o.Status != model.StepsDone || o.Effort != effort || o.Seed != seed {

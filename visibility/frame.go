@@ -76,10 +76,17 @@ func (fr *Frame) AltAz(c ephemeris.Vec) (alt, az float64) {
 	return math.Atan2(z, math.Sqrt(u*u+n*n)), az
 }
 
-// HourAngle returns the hour angle in (-pi, pi], west positive, rad.
+// HourAngle returns the hour angle in (-pi, pi], west positive, rad; diurnal
+// aberration included to first order.
 func (fr *Frame) HourAngle(c ephemeris.Vec) float64 {
 	// East = (-sin a, cos a, 0) with a the local Earth rotation angle.
-	return math.Atan2(-fr.East[0]*c[0]-fr.East[1]*c[1], fr.East[1]*c[0]-fr.East[0]*c[1])
+	return math.Atan2(-fr.East[0]*c[0]-fr.East[1]*c[1]-fr.vd, fr.East[1]*c[0]-fr.East[0]*c[1])
+}
+
+// Declination returns the declination with diurnal aberration, up to 0.32"
+// from that of the direction, rad.
+func (fr *Frame) Declination(c ephemeris.Vec) float64 {
+	return Declination(c.Add(fr.East.Scale(fr.vd)))
 }
 
 // Declination returns the apparent declination, rad.

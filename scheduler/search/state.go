@@ -108,7 +108,7 @@ func newState(p *model.Problem, price pricer) *state {
 // sight computes where a telescope points at a field at an instant.
 func (s *state) sight(scope int32, fr *visibility.Frame, c ephemeris.Vec) mount.Pointing {
 	if s.p.Scopes[scope].Mount == survey.Equatorial {
-		return mount.Pointing{HourAngle: fr.HourAngle(c), Declination: visibility.Declination(c)}
+		return mount.Pointing{HourAngle: fr.HourAngle(c), Declination: fr.Declination(c)}
 	}
 	alt, az := fr.AltAz(c)
 	return mount.Pointing{Altitude: alt, Azimuth: az}
