@@ -68,17 +68,8 @@ func (s *Sky) cuts(site int, from, to, step float64) []float64 {
 	for i := 1; i < end; i++ {
 		a, b := s.Frame(site, out[i-1]), s.Frame(site, out[i])
 		if (a.SinMoon > 0) != (b.SinMoon > 0) {
-			lo, hi := a.T, b.T
-			for hi-lo > 0.1 {
-				mid := (lo + hi) / 2
-				m := s.Frame(site, mid)
-				if (m.SinMoon > 0) == (a.SinMoon > 0) {
-					lo = mid
-				} else {
-					hi = mid
-				}
-			}
-			out = append(out, lo-riseGuard/2, hi+riseGuard/2)
+			t := s.moonCrossing(site, &a, &b)
+			out = append(out, t-riseGuard/2, t+riseGuard/2)
 		}
 		if a.SinSun > sinTwilightEnd || b.SinSun > sinTwilightEnd {
 			for t := a.T + twilightStep; t < b.T-1; t += twilightStep {
@@ -88,6 +79,47 @@ func (s *Sky) cuts(site int, from, to, step float64) []float64 {
 	}
 	slices.Sort(out)
 	return slices.Compact(out)
+}
+
+// moonCrossing finds when the Moon rises or sets between two frames, to 0.1 s.
+func (s *Sky) moonCrossing(site int, a, b *Frame) float64 {
+	lo, hi := a.T, b.T
+	for hi-lo > 0.1 {
+		mid := (lo + hi) / 2
+		m := s.Frame(site, mid)
+		if (m.SinMoon > 0) == (a.SinMoon > 0) {
+			lo = mid
+		} else {
+			hi = mid
+		}
+	}
+	return (lo + hi) / 2
+}
+
+// MoonEdge is a moonrise or moonset: a jump of the sky's brightness.
+type MoonEdge struct {
+	T    float64 // UTC, Unix s
+	Rise bool
+}
+
+// Dark returns an instant just on the moonless side of the edge.
+func (e MoonEdge) Dark() float64 {
+	if e.Rise {
+		return e.T - riseGuard
+	}
+	return e.T + riseGuard
+}
+
+// MoonEdges lists the moonrises and moonsets of a grid's night, ascending.
+func (s *Sky) MoonEdges(site int, g *FrameGrid) []MoonEdge {
+	var out []MoonEdge
+	for i := range g.Cells() {
+		a, b := &g.Frames[i], &g.Frames[i+1]
+		if (a.SinMoon > 0) != (b.SinMoon > 0) {
+			out = append(out, MoonEdge{s.moonCrossing(site, a, b), b.SinMoon > 0})
+		}
+	}
+	return out
 }
 
 // Cell returns the index of the cell that holds an instant, within the grid.

@@ -241,14 +241,7 @@ func (a *Ascent) addLoad(chunk, wi int, picks []pick) {
 			}
 			sh := a.oracle.shapes[pk.scope][a.oracle.shapeOf[a.oracle.kinds[wi][k]][pk.scope]]
 			a.times[chunk][w.Program] += model.Sec(sh.length)
-			for t, end := s, s+sh.busy; t < end; {
-				slot := floorDiv(t, a.prices.slot)
-				next := min(end, (slot+1)*a.prices.slot)
-				if j := slot - a.prices.first; j >= 0 && j < int64(a.prices.n) {
-					load[int(pk.scope)*a.prices.n+int(j)] += float32(model.Sec(next - t))
-				}
-				t = next
-			}
+			a.prices.charge(load, int(pk.scope), int(pk.night), s, s+sh.busy)
 		}
 	}
 }
@@ -316,7 +309,7 @@ func (a *Ascent) group(bl Block, memory float64) *group {
 	keep := a.keepFactor()
 	for s, c := range pr.capacity {
 		if c > 0 {
-			g.capacity[g.of[s]] += c * keep[s/pr.n]
+			g.capacity[g.of[s]] += c * keep[pr.slotOf(s)/pr.n]
 		}
 	}
 	return g
@@ -356,6 +349,9 @@ func (a *Ascent) assign(of []int32, bl Block) int {
 			h := min(int(lst*24/bl.Hours), perDay-1)
 			of[t*pr.n+s] = int32((row*groups+group)*perDay + h)
 		}
+	}
+	for i, k := range pr.parts {
+		of[len(a.p.Scopes)*pr.n+i] = of[k]
 	}
 	return len(a.p.Scopes) * groups * perDay
 }

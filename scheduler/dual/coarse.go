@@ -81,6 +81,12 @@ func (o *Oracle) coarseNight(sc *scratch, wi int, w *model.Want, t int32, n int,
 	bin0 := int32(base - o.firstBin)
 	if len(w.Steps) == 1 {
 		add := o.stepValue(w, 0, t)
+		o.atEdges(wi, w, 0, t, n, func(at int64, worth float64) {
+			worth += add
+			if b := int32(floorDiv(at, o.bin) - o.firstBin); worth > floor && worth > sc.worth[b] {
+				sc.keep(b, worth, t, int32(n), at)
+			}
+		})
 		o.coarseScan(wi, w, 0, t, n, func(k int, at int64, worth float64) {
 			worth += add
 			if b := bin0 + int32(k); worth > floor && worth > sc.worth[b] {
@@ -101,6 +107,11 @@ func (o *Oracle) coarseNight(sc *scratch, wi int, w *model.Want, t int32, n int,
 		add := o.stepValue(w, j, t)
 		o.coarseScan(wi, w, j, t, n, func(k int, at int64, worth float64) {
 			row[k] = binBest{worth + add, at}
+		})
+		o.atEdges(wi, w, j, t, n, func(at int64, worth float64) {
+			if k := int(floorDiv(at, shelfUS) - base); k >= 0 && k < size && worth+add > row[k].worth {
+				row[k] = binBest{worth + add, at}
+			}
 		})
 	}
 	o.joinSteps(sc, w, size)
@@ -141,4 +152,44 @@ func (o *Oracle) coarseScan(wi int, w *model.Want, step int, t int32, n int, fou
 			}
 		}
 	}
+}
+
+// atEdges calls found with the starts whose middle falls just on the dark side
+// of a moonrise or moonset: full quality for time that is half cheap.
+func (o *Oracle) atEdges(wi int, w *model.Want, step int, t int32, n int, found func(at int64, worth float64)) {
+	scope := &o.p.Scopes[t]
+	edges := o.p.MoonEdges(int(scope.Site), n)
+	if len(edges) == 0 {
+		return
+	}
+	sh := o.shapes[t][o.shapeOf[o.kinds[wi][step]][t]]
+	pn := &o.prices.nights[int(t)*o.p.Nights+n]
+	filter := int(w.Steps[step].Filter)
+	for _, e := range edges {
+		mid := e.Dark()
+		at := model.MicroOf(mid) - sh.length/2
+		if !o.legal(w, scope, n, at, sh.length) {
+			continue
+		}
+		fr := o.p.Sky.Frame(int(scope.Site), mid)
+		q := o.p.Sky.Quality(&fr, filter, o.p.Sky.Direction(int(w.Field), mid))
+		found(at, w.Value/float64(len(w.Steps))*q-(o.prices.until(pn, at+sh.busy)-o.prices.until(pn, at)))
+	}
+}
+
+// legal reports whether an exposure lies in one window and one open interval.
+func (o *Oracle) legal(w *model.Want, scope *model.Scope, n int, at, length int64) bool {
+	in := false
+	for _, s := range o.p.Open(int(scope.ID), n) {
+		in = in || at >= s.From && at+length <= s.To
+	}
+	if !in {
+		return false
+	}
+	for _, win := range o.p.Windows.Of(int(w.Unit), int(scope.Class), n) {
+		if f, to := o.p.Inward(win); at >= f && at+length <= to {
+			return true
+		}
+	}
+	return false
 }

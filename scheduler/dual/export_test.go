@@ -4,7 +4,8 @@ package dual
 func (a *Ascent) SetRates(rate func(scope, slot int) float64) {
 	n := a.prices.n
 	for i := range a.prices.rate {
-		a.prices.rate[i] = rate(i/n, i%n)
+		k := a.prices.slotOf(i)
+		a.prices.rate[i] = rate(k/n, k%n)
 	}
 	a.prices.integrate()
 }

@@ -12,9 +12,12 @@ import (
 // never below 0.
 type Prices struct {
 	p     *model.Problem
-	slot  int64     // us
-	first int64     // slot number (since 1970) of index 0
-	n     int       // slots
+	slot  int64 // us
+	first int64 // slot number (since 1970) of index 0
+	n     int   // slots
+	// parts are the pieces of slots cut at a moonrise or moonset, where the
+	// worth of time jumps: their prices stand behind those of the slots.
+	parts []int32   // [rate index - scopes*n] the slot's rate index
 	rate  []float64 // [scope*n + slot]
 	// capacity in seconds: open time of the telescope inside the slot.
 	capacity []float64
@@ -59,12 +62,22 @@ func NewPrices(p *model.Problem) *Prices {
 	return pr
 }
 
+// edgeReach is how far about a moonrise or moonset prices have pieces of their
+// own, us: half a usual exposure, whose middle may be dark while its other
+// half is cheap.
+const edgeReach = 120 * model.Micro
+
 // layout sets the knots of a telescope-night and adds its capacity.
 func (pr *Prices) layout(scope, night int) priceNight {
 	var pn priceNight
 	open := pr.p.OpenOuter(scope, night)
 	if len(open) == 0 {
 		return pn
+	}
+	var cuts []int64
+	for _, e := range pr.p.MoonEdges(int(pr.p.Scopes[scope].Site), night) {
+		t := model.MicroOf(e.T)
+		cuts = append(cuts, t-edgeReach, t, t+edgeReach)
 	}
 	for i, o := range open {
 		if i > 0 && o.From > open[i-1].To {
@@ -79,9 +92,24 @@ func (pr *Prices) layout(scope, night int) priceNight {
 		for t := from; t < o.To; {
 			s := floorDiv(t, pr.slot)
 			end := min((s+1)*pr.slot, o.To)
+			k := scope*pr.n + int(s-pr.first)
+			part := false
+			for _, c := range cuts {
+				if c > s*pr.slot && c < (s+1)*pr.slot {
+					part = true
+					if c > t {
+						end = min(end, c)
+					}
+				}
+			}
+			if part {
+				pr.parts = append(pr.parts, int32(k))
+				pr.rate = append(pr.rate, 0)
+				pr.capacity = append(pr.capacity, 0)
+				k = len(pr.rate) - 1
+			}
 			pn.knots = append(pn.knots, t)
 			pn.open = append(pn.open, true)
-			k := scope*pr.n + int(s-pr.first)
 			pn.slots = append(pn.slots, int32(k))
 			pr.capacity[k] += model.Sec(end - t)
 			t = end
@@ -100,6 +128,7 @@ func (pr *Prices) layout(scope, night int) priceNight {
 
 // integrate refreshes the running integrals after the rates changed.
 func (pr *Prices) integrate() {
+	pr.meanParts()
 	model.Parallel(pr.p.Workers, len(pr.nights), func(i int) {
 		pn := &pr.nights[i]
 		for k := range pn.open {
@@ -155,6 +184,56 @@ func (pr *Prices) until(pn *priceNight, us int64) float64 {
 	return pn.sum[k] + pr.rate[pn.slots[k]]*model.Sec(us-pn.knots[k])
 }
 
+// meanParts gives every slot that is cut the mean price of its pieces.
+func (pr *Prices) meanParts() {
+	base := len(pr.p.Scopes) * pr.n
+	weight := make(map[int32]float64, len(pr.parts))
+	for i, k := range pr.parts {
+		c := pr.capacity[base+i] + 1e-9
+		pr.rate[k] = (pr.rate[k]*weight[k] + pr.rate[base+i]*c) / (weight[k] + c)
+		weight[k] += c
+	}
+}
+
+// openSeconds returns a slot's open time on a telescope, pieces included.
+func (pr *Prices) openSeconds() []float64 {
+	base := len(pr.p.Scopes) * pr.n
+	out := append([]float64(nil), pr.capacity[:base]...)
+	for i, k := range pr.parts {
+		out[k] += pr.capacity[base+i]
+	}
+	return out
+}
+
+// slotOf returns the slot's rate index of a rate index.
+func (pr *Prices) slotOf(k int) int {
+	if base := len(pr.p.Scopes) * pr.n; k >= base {
+		return int(pr.parts[k-base])
+	}
+	return k
+}
+
+// charge adds busy seconds [from, to) of a telescope-night to the loads by
+// rate index.
+func (pr *Prices) charge(load []float32, scope, night int, from, to int64) {
+	pn := &pr.nights[scope*pr.p.Nights+night]
+	if len(pn.knots) == 0 {
+		return
+	}
+	last := len(pn.knots) - 1
+	from, to = max(from, pn.knots[0]), min(to, pn.knots[last])
+	if from >= to {
+		return
+	}
+	k := int(pn.index[floorDiv(from, pr.slot)-pn.base])
+	for ; k < last && pn.knots[k] < to; k++ {
+		a, b := max(from, pn.knots[k]), min(to, pn.knots[k+1])
+		if b > a && pn.open[k] {
+			load[pn.slots[k]] += float32(model.Sec(b - a))
+		}
+	}
+}
+
 // Cost returns the price of the open time of a telescope-night inside
 // [from, to), in C.
 func (pr *Prices) Cost(scope, night int, from, to int64) float64 {
@@ -174,9 +253,10 @@ func (pr *Prices) At(scope int, us int64) float64 {
 // List returns the prices of all slots with open time, for the tables.
 func (pr *Prices) List() []model.Price {
 	var out []model.Price
+	open := pr.openSeconds()
 	for t := range pr.p.Scopes {
 		for s := range pr.n {
-			if pr.capacity[t*pr.n+s] > 0 {
+			if open[t*pr.n+s] > 0 {
 				out = append(out, model.Price{
 					Telescope: int32(t),
 					SlotStart: (pr.first + int64(s)) * pr.slot / model.Micro,

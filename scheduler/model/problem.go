@@ -30,6 +30,7 @@ type Problem struct {
 	open      [][]Span                // [telescope * Nights + night]
 	outer     [][]Span                // the same, widened for the ceiling
 	grids     []*visibility.FrameGrid // [site * Nights + night]
+	edges     [][]visibility.MoonEdge // [site * Nights + night]
 	bonus     []float64               // [field]
 	MaxValue  float64                 // largest Want.Value, for scales
 	Unserved  float64                 // weight share of demands that no telescope qualifies for; they can't be got
@@ -155,6 +156,7 @@ func (p *Problem) OpenOuter(scope, night int) []Span { return p.outer[scope*p.Ni
 func (p *Problem) setGrids() {
 	sites := len(p.Survey.Sites)
 	p.grids = make([]*visibility.FrameGrid, sites*p.Nights)
+	p.edges = make([][]visibility.MoonEdge, sites*p.Nights)
 	Parallel(p.Workers, len(p.grids), func(i int) {
 		site, n := i/p.Nights, i%p.Nights
 		from, to := math.Inf(1), math.Inf(-1)
@@ -165,6 +167,7 @@ func (p *Problem) setGrids() {
 		}
 		if to > from {
 			p.grids[i] = p.Sky.FrameGrid(site, from-2, to+2, GridStep)
+			p.edges[i] = p.Sky.MoonEdges(site, p.grids[i])
 		}
 	})
 }
@@ -235,6 +238,11 @@ func (p *Problem) Open(scope, night int) []Span { return p.open[scope*p.Nights+n
 
 // Grid returns the frames of a site and night, or nil when it is never open.
 func (p *Problem) Grid(site, night int) *visibility.FrameGrid { return p.grids[site*p.Nights+night] }
+
+// MoonEdges returns the moonrises and moonsets of a site's night.
+func (p *Problem) MoonEdges(site, night int) []visibility.MoonEdge {
+	return p.edges[site*p.Nights+night]
+}
 
 // Bonus returns what finishing a field adds to C. A field with a demand that
 // no telescope may serve can't be finished.

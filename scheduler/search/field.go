@@ -11,18 +11,15 @@ import (
 // most: the one move of construction and sweeps.
 type placer struct {
 	s      *state
-	find   finder
+	find   finder  // for single looks
+	scouts []scout // for looks over all nights
 	choose chooser
 	mu     []float64 // [want] what the last visit was worth: spots much below are passed over
 	all    []spot
-	steps  [][]spot // of sets: spots by step
 	combos []combo
 	picked []int
 	banned []spot // spots of the want being filled that turned out not to work
 }
-
-// combo is a whole set on one telescope-night: a spot for each step.
-type combo struct{ spots []spot }
 
 // startBin is the width of the bins in which the finder keeps one spot, s.
 const startBin = 200
@@ -30,6 +27,9 @@ const startBin = 200
 func newPlacer(s *state, mu []float64) *placer {
 	pl := &placer{s: s, mu: slices.Clone(mu)}
 	pl.find = finder{s: s, bin: startBin * model.Micro}
+	for range s.p.Workers {
+		pl.scouts = append(pl.scouts, scout{find: pl.find})
+	}
 	return pl
 }
 
@@ -149,32 +149,27 @@ func (pl *placer) fill(wi int, extra float64) {
 }
 
 // gather lists the want's spots over all telescopes and nights, by start, as
-// far as they are worth more than least, and adds extra to each.
+// far as they are worth more than least, and adds extra to each. The nights
+// are looked through by several scouts, each a stretch of them; what they
+// bring is joined in the order of the nights.
 func (pl *placer) gather(wi int, w *model.Want, least, extra float64) {
-	pl.find.spots = pl.find.spots[:0]
-	pl.combos = pl.combos[:0]
-	for _, t := range w.Scopes {
-		for n := range pl.s.p.Nights {
-			if len(w.Steps) == 1 {
-				pl.find.find(w, 0, t, n, least)
-			} else {
-				pl.gatherSet(w, t, n, least)
-			}
+	nights := pl.s.p.Nights
+	cells := len(w.Scopes) * nights
+	model.Parallel(len(pl.scouts), len(pl.scouts), func(k int) {
+		sc := &pl.scouts[k]
+		sc.spots, sc.combos = sc.spots[:0], sc.combos[:0]
+		for i := k * cells / len(pl.scouts); i < (k+1)*cells/len(pl.scouts); i++ {
+			sc.look(w, w.Scopes[i/nights], i%nights, least)
 		}
-	}
-	pl.all = append(pl.all[:0], pl.find.spots...)
-	if len(w.Steps) > 1 {
-		pl.all = pl.all[:0]
-		for i := range pl.combos {
-			c := &pl.combos[i]
-			sp := c.spots[0]
-			sp.profit = 0
-			for _, x := range c.spots {
-				sp.profit += x.profit
-			}
-			sp.combo = int32(i)
+	})
+	pl.all, pl.combos = pl.all[:0], pl.combos[:0]
+	for k := range pl.scouts {
+		sc := &pl.scouts[k]
+		for _, sp := range sc.spots {
+			sp.combo += int32(len(pl.combos))
 			pl.all = append(pl.all, sp)
 		}
+		pl.combos = append(pl.combos, sc.combos...)
 	}
 	if len(pl.banned) > 0 {
 		pl.all = slices.DeleteFunc(pl.all, pl.isBanned)
@@ -214,66 +209,6 @@ func (s *state) tooNear(w *model.Want, wi int, sp spot) bool {
 		}
 	}
 	return w.PerNight > 0 && same >= w.PerNight
-}
-
-// gatherSet combines spots of the steps of a set on one telescope-night.
-func (pl *placer) gatherSet(w *model.Want, t int32, n int, least float64) {
-	k := len(w.Steps)
-	for len(pl.steps) < k {
-		pl.steps = append(pl.steps, nil)
-	}
-	class := pl.s.p.Scopes[t].Class
-	total := 0.0
-	value := w.Value / float64(k)
-	for i := range w.Steps {
-		total += value * pl.s.p.Shelf.Top(class, n, w.Steps[i].Row)
-	}
-	if total <= least {
-		return
-	}
-	for i := range w.Steps {
-		own := value * pl.s.p.Shelf.Top(class, n, w.Steps[i].Row)
-		pl.find.spots = pl.find.spots[:0]
-		pl.find.find(w, i, t, n, least-(total-own))
-		pl.steps[i] = append(pl.steps[i][:0], pl.find.spots...)
-		if len(pl.steps[i]) == 0 {
-			return
-		}
-	}
-	for _, first := range pl.steps[0] {
-		if c, profit, ok := pl.chain(w, first); ok && profit > least {
-			pl.combos = append(pl.combos, combo{c})
-		}
-	}
-}
-
-// chain extends a first step greedily: for each later step the best spot
-// within its tolerance.
-func (pl *placer) chain(w *model.Want, first spot) ([]spot, float64, bool) {
-	c := make([]spot, 1, len(w.Steps))
-	c[0] = first
-	profit := first.profit
-	at := first.start
-	for j := 1; j < len(w.Steps); j++ {
-		st := &w.Steps[j]
-		best := -1
-		for i := range pl.steps[j] {
-			d := pl.steps[j][i].start - at - st.After
-			if d < -st.Tolerance/2 || d > st.Tolerance/2 {
-				continue
-			}
-			if best < 0 || pl.steps[j][i].profit > pl.steps[j][best].profit {
-				best = i
-			}
-		}
-		if best < 0 {
-			return nil, 0, false
-		}
-		c = append(c, pl.steps[j][best])
-		profit += pl.steps[j][best].profit
-		at = pl.steps[j][best].start
-	}
-	return c, profit, true
 }
 
 // putBack inserts the k-th picked visit, ejecting what makes room. It leaves

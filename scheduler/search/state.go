@@ -132,6 +132,10 @@ func (s *state) gapBetween(scope int32, a, b *entry) int64 {
 // slewGuard is how much longer the audit may find a slew, s: near the zenith
 // (of an equatorial mount: the pole) an axis has far to go for an arc second.
 func slewGuard(t *survey.Telescope, a, b *mount.Pointing) float64 {
+	if t.Mount == survey.Altazimuth && a.Altitude < steep && b.Altitude < steep {
+		// The time is concave in the way: no more than that for the guard alone.
+		return mount.AxisTime(5*axisGuard, t.Slew.Rate, t.Slew.Acceleration)
+	}
 	turn, ca, cb := b.Azimuth-a.Azimuth, math.Cos(a.Altitude), math.Cos(b.Altitude)
 	if t.Mount == survey.Equatorial {
 		turn, ca, cb = b.HourAngle-a.HourAngle, math.Cos(a.Declination), math.Cos(b.Declination)
