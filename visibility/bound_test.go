@@ -179,3 +179,76 @@ func TestNodeQualityHolds(t *testing.T) {
 	}
 	t.Logf("%d cells; the bound comes as near as %.3g", cells, least)
 }
+
+// TestBoundHoldsWhereTheMoonDips puts the Moon's lower culmination a few arc
+// seconds under the horizon of a place at high latitude: it is down for less
+// than a cell, up at both ends of it.
+func TestBoundHoldsWhereTheMoonDips(t *testing.T) {
+	e := NewExact(ephemeris.NewClock(nil, ephemeris.Orientation{}))
+	r := rand.New(rand.NewPCG(1, 14))
+	filter := Filter{Name: "w", Band: BandV, Extinction: 0.05, DarkSky: 22, Moonlight: 1}
+	met := 0
+	for trial := 0; trial < boundRounds(600, 6000); trial++ {
+		// An instant in the middle of a cell, and the meridian on which the
+		// Moon culminates below the pole then.
+		at := math.Floor(20454+r.Float64()*3652)*86400 + 43200 + 150
+		site := Site{Latitude: 70 * degree}
+		for range 3 {
+			site.Longitude = math.Remainder(site.Longitude+math.Pi-e.Moon(site, at).HourAngle, 2*math.Pi)
+		}
+		// The Moon's own motion moves its lowest moment off the meridian.
+		lo, hi := 50*degree, 80*degree // from down to up, if it goes north
+		low := func(lat float64) float64 {
+			site.Latitude = lat
+			for range 6 {
+				a, b, c := e.Moon(site, at-60).Altitude, e.Moon(site, at).Altitude, e.Moon(site, at+60).Altitude
+				late := -60 * (c - a) / 2 / (a - 2*b + c)
+				site.Longitude += earthRate * math.Max(-3600, math.Min(3600, late))
+			}
+			return e.Moon(site, at).Altitude + 2e-6
+		}
+		if low(lo) > 0 || low(hi) < 0 {
+			continue
+		}
+		for hi-lo > 1e-9 {
+			if m := (lo + hi) / 2; low(m) > 0 {
+				hi = m
+			} else {
+				lo = m
+			}
+		}
+		if e.Sun(site, at).Altitude > -10*degree {
+			continue
+		}
+		n := &trialNight{what: fmt.Sprint("dip ", trial), site: site, exact: e}
+		for range 20 {
+			n.places = append(n.places, Position{RA: r.Float64() * 2 * math.Pi, Dec: math.Asin(0.6 + 0.4*r.Float64())})
+		}
+		n.sky = NewSky(e, []Site{site}, []Filter{filter}, n.places, at-7200, at+7200, 1)
+		g := n.sky.BoundGrid(0, at-3600, at+3600, 300)
+		nodes := n.sky.FrameGrid(0, at-3600, at+3600, 300)
+		k, j := g.Cell(at), nodes.Cell(at)
+		if nodes.Frames[j].SinMoon <= 0 || nodes.Frames[j+1].SinMoon <= 0 || math.Abs(e.Moon(site, at).Altitude+2e-6) > 1e-7 {
+			continue
+		}
+		met++
+		for field := range n.places {
+			c := n.sky.Direction(field, at)
+			q := n.quality(field, at)[0]
+			left, right := g.Bound(k, 0, c)
+			u := (at - g.Frames[k].T) / (g.Frames[k+1].T - g.Frames[k].T)
+			if over := q - left - u*(right-left); over > 0 {
+				t.Errorf("%s, field %d: quality %.6f is %.3g over the cell's bound", n.what, field, q, over)
+			}
+			_, left = n.sky.NodeQuality(nodes, j, 0, c)
+			_, right = n.sky.NodeQuality(nodes, j+1, 0, c)
+			if over := q - (left+right)/2; over > 0 {
+				t.Errorf("%s, field %d: quality %.6f is %.3g over the nodes' bound", n.what, field, q, over)
+			}
+		}
+	}
+	if met < 3 {
+		t.Errorf("only %d such nights met", met)
+	}
+	t.Logf("%d nights", met)
+}

@@ -44,7 +44,7 @@ func (s *Sky) BoundGrid(site int, from, to, step float64) *BoundGrid {
 			if !culminates(a, b) {
 				c.twilight = math.Min(la.twilight, lb.twilight)
 			}
-			if a.SinMoon > 0 && b.SinMoon > 0 && b.T-a.T > 2*riseGuard {
+			if staysUp(a, b) && b.T-a.T > 2*riseGuard {
 				c.left, c.right = la.moon, lb.moon
 				m := s.filters[f].curve.moon[min(int(math.Min(a.SinMoon, b.SinMoon)*moonBins), moonBins-1)]
 				c.l1, c.l2 = m[0], m[1]

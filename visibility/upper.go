@@ -140,9 +140,9 @@ func (g *FrameGrid) setNodes(s *Sky) {
 		up, still := true, false
 		least := 1.0
 		for j := lo; j <= hi; j++ {
-			up = up && g.Frames[j].SinMoon > 0
 			least = math.Min(least, g.Frames[j].SinMoon)
 			if j > lo {
+				up = up && staysUp(&g.Frames[j-1], &g.Frames[j])
 				still = still || culminates(&g.Frames[j-1], &g.Frames[j])
 			}
 		}
@@ -168,6 +168,16 @@ func (g *FrameGrid) setNodes(s *Sky) {
 // two frames, or comes near enough that its altitude may not be monotone.
 func culminates(a, b *Frame) bool {
 	return a.East.Dot(a.Sun)*b.East.Dot(b.Sun) <= 1e-6
+}
+
+// staysUp reports whether the Moon is up all through between two frames. At a
+// culmination its sine can dip under both ends by (omega h)^2/8; it can't when
+// the ends differ by so much that it is monotone in between.
+func staysUp(a, b *Frame) bool {
+	turn := earthRate * (b.T - a.T)
+	least := math.Min(a.SinMoon, b.SinMoon)
+	const off = 5e-6 // the tables' Moon against the exact one
+	return least > 0 && (least > turn*turn/8+off || math.Abs(a.SinMoon-b.SinMoon) > turn*turn)
 }
 
 // NodeQuality returns, for the field's direction at frame k, its quality there
