@@ -24,6 +24,14 @@ import (
 )
 
 func main() {
+	if err := bench(); err != nil {
+		fmt.Fprintln(os.Stderr, "bench:", err)
+		os.Exit(1)
+	}
+}
+
+// bench runs what the flags ask for.
+func bench() error {
 	families := flag.String("families", strings.Join(starter.FamilyNames(), ","), "families, or survey folders, separated by commas")
 	seeds := flag.Int("seeds", 1, "seeds of each family")
 	effort := flag.String("effort", "normal", "quick, normal or thorough")
@@ -34,12 +42,10 @@ func main() {
 	if *profile != "" {
 		f, err := os.Create(*profile)
 		if err != nil {
-			fmt.Fprintln(os.Stderr, err)
-			os.Exit(1)
+			return err
 		}
 		if err := pprof.StartCPUProfile(f); err != nil {
-			fmt.Fprintln(os.Stderr, err)
-			os.Exit(1)
+			return err
 		}
 		defer pprof.StopCPUProfile()
 	}
@@ -48,11 +54,11 @@ func main() {
 	for _, name := range strings.Split(*families, ",") {
 		for seed := uint64(1); seed <= uint64(*seeds); seed++ {
 			if err := run(name, seed, *effort, *workers, *phases); err != nil {
-				fmt.Fprintln(os.Stderr, name+":", err)
-				os.Exit(1)
+				return fmt.Errorf("%s: %w", name, err)
 			}
 		}
 	}
+	return nil
 }
 
 func load(name string, seed uint64) (*survey.Survey, error) {
