@@ -10,8 +10,8 @@ import (
 //
 // In a cell [t0, t0+h] of a FrameGrid, replace the sky by one that is never
 // brighter: the twilight by the smallest of its values at the ends (the
-// Sun's altitude is monotone in a cell unless it culminates in it, and then
-// its least value is at an end or the cell's twilight is taken as zero), the
+// Sun's altitude is monotone in a cell unless it may culminate in it, and then
+// the cell's twilight is taken as zero), the
 // moonlight by none if the Moon rises or sets in the cell. What is left,
 //
 //	R(t) = C(s) / (D(s) + M(t) E(s) + tau),   s = sin h(t), tau constant,
@@ -164,10 +164,14 @@ func (g *FrameGrid) setNodes(s *Sky) {
 	}
 }
 
-// culminates reports whether the Sun's hour angle passes 0 or 12 h between
-// two frames, or comes near enough that its altitude may not be monotone.
+// culminates reports whether the Sun's altitude may turn round between two
+// frames. Its sine's second derivative is at most omega^2 cos(latitude), so it
+// is monotone where it changes by more than that times h^2. (The meridian is
+// no guide at high latitudes: the Sun's own motion moves its lowest moment.)
 func culminates(a, b *Frame) bool {
-	return a.East.Dot(a.Sun)*b.East.Dot(b.Sun) <= 1e-6
+	turn := earthRate * (b.T - a.T)
+	cosLat := math.Hypot(a.Zenith[0], a.Zenith[1])
+	return math.Abs(a.SinSun-b.SinSun) <= turn*turn*cosLat+1e-9
 }
 
 // staysUp reports whether the Moon is up all through between two frames. At a
