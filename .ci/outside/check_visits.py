@@ -243,8 +243,11 @@ def check_visits(j, sv, rows):
             if k and abs(r["start"] - shots[k - 1]["start"] - after) > tolerance + SLACK["time"]:
                 j.fault(f"visit {r['visit']}: it isn't {after} s after the exposure before, within {tolerance} s")
             unit = sv.weight(field) / (sv.wanted(field) * (1 + sv.bonus) * total * len(steps))
-            if abs(r["mid"]["moon"]) > SLACK["moon"]:
-                j.compare("credit", float(r["credit"]) / (unit * r["q"]), 1)
+            want, is_ = unit * r["q"], float(r["credit"])
+            if want > 0 and abs(r["mid"]["moon"]) > SLACK["moon"]:
+                j.compare("credit", is_ / want, 1)
+            elif not want and is_:
+                j.fault(f"visit {r['visit']}: it earns nothing, and its credit is {is_}")
         got[field, demand].append(shots)
     for (field, demand), list_ in got.items():
         d = sv.demands[sv.fields[field]["program"], demand]

@@ -15,7 +15,7 @@ import tempfile
 
 import check_visits
 
-PART = 700  # rows of the plan, or so, are enough
+NIGHTS = 4
 
 
 def second_of_a_set(rows):
@@ -50,7 +50,8 @@ def delete(rows):
 
 
 def label(rows):
-    rows[0]["night"] = rows[-1]["night"]
+    day = datetime.date.fromisoformat(rows[0]["night"]) + datetime.timedelta(days=1)
+    rows[0]["night"] = day.isoformat()
 
 
 def overlap(rows):
@@ -115,8 +116,8 @@ def main(survey, visits):
         reader = csv.DictReader(f)
         names, good = reader.fieldnames, list(reader)
     # The first nights of a plan are enough, each of them whole.
-    if len(good) > PART:
-        good = [r for r in good if r["night"] < good[PART]["night"]] or good
+    kept = sorted({r["night"] for r in good})[:NIGHTS]
+    good = [r for r in good if r["night"] in kept]
     failed = 0
     for what, do, want in [("nothing", lambda rows: None, None), *BROKEN]:
         rows = [dict(r) for r in good]

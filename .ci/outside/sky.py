@@ -150,6 +150,8 @@ def sky_flux(f, alt, sun_alt, moon_alt, sep, phase):
 
 
 def quality(f, alt, flux):
-    x = airmass(alt)
+    """0 at and below the horizon."""
+    up = alt > 0
+    x = airmass(np.where(up, alt, np.pi / 2))
     q = 10 ** (-0.8 * f["extinction"] * (x - 1)) * x**-1.2
-    return np.minimum(1, q * 10 ** (-0.4 * f["dark_sky"]) / flux)
+    return np.where(up, np.minimum(1, q * 10 ** (-0.4 * f["dark_sky"]) / flux), 0)
