@@ -20,8 +20,8 @@ var efforts = map[string]effort{
 		},
 		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 12, Sample: 2, Eta: 0.3, EtaLast: 0.05},
 		ceilingBin: 600,
-		construct:  0.8,
-		sweeps:     []float64{0.4, 0},
+		construct:  1,
+		sweeps:     []float64{0.5, 0},
 	},
 	"normal": {
 		levels: []dual.Level{
@@ -31,8 +31,8 @@ var efforts = map[string]effort{
 		},
 		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 16, Sample: 2, Eta: 0.3, EtaLast: 0.05},
 		ceilingBin: 300,
-		construct:  0.8,
-		sweeps:     []float64{0.6, 0.3, 0},
+		construct:  1,
+		sweeps:     []float64{1, 0.7, 0.4, 0},
 	},
 	"thorough": {
 		levels: []dual.Level{
@@ -42,7 +42,7 @@ var efforts = map[string]effort{
 		},
 		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 2, Eta: 0.3, EtaLast: 0.05},
 		ceilingBin: 150,
-		construct:  0.8,
-		sweeps:     []float64{0.8, 0.6, 0.4, 0.2, 0, 0, 0},
+		construct:  1,
+		sweeps:     []float64{1, 1, 0.8, 0.6, 0.4, 0.2, 0, 0},
 	},
 }

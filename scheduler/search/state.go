@@ -120,12 +120,17 @@ func (s *state) sight(scope int32, fr *visibility.Frame, c ephemeris.Vec) mount.
 const (
 	gapGuard  = 1000
 	axisGuard = 2.5e-7
+	sideGuard = 2e-6 // rad of hour angle
 )
 
 // gapBetween returns the needed gap from a to b, us, on a telescope.
 func (s *state) gapBetween(scope int32, a, b *entry) int64 {
 	t := s.p.Scopes[scope].Telescope
-	gap := mount.Gap(t, a.to, b.at, int(a.filter), int(b.filter), a.east, b.east)
+	toEast := b.east
+	if t.Flip != nil && (math.Abs(a.at.HourAngle) < sideGuard || math.Abs(b.at.HourAngle) < sideGuard) {
+		toEast = !a.east // too near the meridian to be sure of the side
+	}
+	gap := mount.Gap(t, a.to, b.at, int(a.filter), int(b.filter), a.east, toEast)
 	return model.MicroCeil(gap+slewGuard(t, &a.to, &b.at)) + gapGuard
 }
 
