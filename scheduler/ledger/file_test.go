@@ -259,7 +259,7 @@ func readOnly(t *testing.T, fill func(dir string)) (string, error) {
 		t.Cleanup(func() { os.Chmod(dir, 0o755) })
 		return dir, errors.Join(os.Chmod(filepath.Join(dir, FileName), 0o444), os.Chmod(dir, 0o555))
 	}
-	dir, err := mounted(t, "4m")
+	dir, err := mounted(t, "16m")
 	if err != nil {
 		return "", err
 	}
@@ -268,6 +268,77 @@ func readOnly(t *testing.T, fill func(dir string)) (string, error) {
 		return "", fmt.Errorf("remount: %w: %s", err, out)
 	}
 	return dir, nil
+}
+
+// cutOff makes the files of a writer that was killed amid its writing, in a
+// folder: a ledger of one exposure with a journal to roll back.
+func cutOff(b *bench, dir string) {
+	b.Helper()
+	b.must(head + line("A1", "C1", "r", "04:00"))
+	l := b.open()
+	defer l.Close()
+	batch := b.read(manyRows(30_000, time.Unix(1.5e9, 0))) // more than SQLite keeps in memory
+	stop := errors.New("stop")
+	err := l.change(b.Context(), "1.0", func(tx *sql.Tx) error {
+		c := &recording{l: l, m: newMatcher(b.sv, b.exact), past: map[key][]*record{}}
+		for i := range batch.Rows {
+			c.takeShot(&batch.Rows[i])
+		}
+		if err := c.write(b.Context(), tx, "record", Entry{}); err != nil {
+			return err
+		}
+		for _, suffix := range []string{"", "-journal"} {
+			text, err := os.ReadFile(b.path + suffix)
+			if err != nil {
+				return err
+			}
+			if err := os.WriteFile(filepath.Join(dir, FileName+suffix), text, 0o644); err != nil {
+				return err
+			}
+		}
+		return stop
+	})
+	if !errors.Is(err, stop) {
+		b.Fatal(err)
+	}
+	b.path = filepath.Join(dir, FileName)
+}
+
+func TestAReaderTakesBackWhatWasCutOff(t *testing.T) {
+	b := newBench(t)
+	cutOff(b, t.TempDir())
+	if n := len(b.done()); n != 1 {
+		t.Errorf("%d exposures; want the 1 from before the write that was cut off", n)
+	}
+	if _, err := os.Stat(b.path + "-journal"); !errors.Is(err, os.ErrNotExist) {
+		t.Errorf("the journal is still there: %v", err)
+	}
+	b.sound()
+}
+
+func TestWhatWasCutOffIsToldInAReadOnlyFolder(t *testing.T) {
+	b := newBench(t)
+	_, err := readOnly(t, func(dir string) { cutOff(b, dir) })
+	if err != nil {
+		// Even NIGHTWRIGHT_REQUIRE_ALL can't ask for what the machine forbids.
+		t.Skip("no folder can be made read-only here, with NIGHTWRIGHT_REQUIRE_ALL or without: ", err)
+	}
+	if _, err := Open(b.path); err == nil || !strings.Contains(err.Error(), "a write to it was cut off and must be taken back first") {
+		t.Errorf("got %v", err)
+	}
+}
+
+func TestFoldersOfAnyName(t *testing.T) {
+	b := newBench(t)
+	dir := filepath.Join(t.TempDir(), "a b?mode=ro&c#d%41 é")
+	if err := os.Mkdir(dir, 0o755); err != nil {
+		t.Fatal(err)
+	}
+	b.path = filepath.Join(dir, FileName)
+	b.must(head + line("A1", "C1", "r", "04:00"))
+	if _, err := os.Stat(b.path); err != nil || len(b.done()) != 1 {
+		t.Errorf("the ledger went elsewhere: %v", err)
+	}
 }
 
 func TestAReadOnlyFolderCanBeRead(t *testing.T) {

@@ -44,14 +44,17 @@ var ErrBusy = errors.New("another program is writing the ledger")
 // Open opens a ledger to read it. A file that isn't there is an empty ledger,
 // and isn't made. A ledger of another kind or of a newer version is a
 // *FileError.
-func Open(path string) (*Ledger, error) { return open(path, "ro") }
+//
+// Where a process was killed amid its writing, opening first takes back what
+// that one had begun; only this needs a folder that can be written to.
+func Open(path string) (*Ledger, error) { return open(path, "rw") }
 
 // OpenWriter opens a ledger to read and to write it. The file is made with the
 // first entry. Errors are as those of Open.
 func OpenWriter(path string) (*Ledger, error) { return open(path, "rwc") }
 
 func open(path, mode string) (*Ledger, error) {
-	l := &Ledger{path: path, write: mode != "ro"}
+	l := &Ledger{path: path, write: mode == "rwc"}
 	info, err := os.Stat(path)
 	switch {
 	case errors.Is(err, fs.ErrNotExist):
@@ -106,7 +109,11 @@ func (l *Ledger) explain(err error) error {
 	if !errors.As(err, &e) {
 		return err
 	}
-	switch e.Code() & 0xff {
+	code := e.Code() & 0xff
+	if !l.write && (code == sqlite3.SQLITE_READONLY || code == sqlite3.SQLITE_CANTOPEN) {
+		return fmt.Errorf("%s: it can't be read here: a write to it was cut off and must be taken back first; let 'nightwright ledger' read it once where its folder can be written to", l.path)
+	}
+	switch code {
 	case sqlite3.SQLITE_BUSY, sqlite3.SQLITE_LOCKED:
 		return fmt.Errorf("%s: %w; it was waited for %v and nothing was written; try again when that one is done", l.path, ErrBusy, Wait)
 	case sqlite3.SQLITE_FULL:
@@ -114,9 +121,6 @@ func (l *Ledger) explain(err error) error {
 	case sqlite3.SQLITE_READONLY:
 		return fmt.Errorf("%s: the file or its folder is read-only; nothing was written; want a folder that can be written to", l.path)
 	case sqlite3.SQLITE_CANTOPEN:
-		if !l.write {
-			return fmt.Errorf("%s: it can't be opened to read; if a write to it was cut off, let 'nightwright ledger' look at it once where the folder can be written to", l.path)
-		}
 		return fmt.Errorf("%s: it can't be opened to write; want a folder that can be written to", l.path)
 	case sqlite3.SQLITE_NOTADB, sqlite3.SQLITE_CORRUPT:
 		return &FileError{l.path, fmt.Sprintf("it is damaged, or no ledger (%s)", e.Error()), "want the file as it was written; bring it back from a copy"}
