@@ -73,6 +73,9 @@ Interrupted, it leaves the plan that stood there.`,
 		}
 		a.endProgress()
 		a.note("planned, audited and written in %.1f s", time.Since(began).Seconds())
+		if r.Unrecorded != nil {
+			a.note("warning: the ledger doesn't have this plan: %v", r.Unrecorded)
+		}
 		switch {
 		case a.asJSON:
 			return a.json(planJSON(r))

@@ -29,6 +29,8 @@ func TestMain(m *testing.M) {
 //	exits N nightwright ...   run it and compare its exit code
 //	small DIR [SED]...        write testdata/small there, each OLD=NEW replaced
 //	columns FILE NAMES        compare the head line of a CSV file
+//	mark FILE OUT MARK [COL]  copy a CSV file with a column done, and the column COL emptied
+//	worth                     the last stdout, JSON of the ledger, has all of the planned credit
 //	width N                   no line of the last stdout is wider, commands to paste apart
 func TestScripts(t *testing.T) {
 	small, err := filepath.Abs(filepath.Join("testdata", "small"))
@@ -46,6 +48,7 @@ func TestScripts(t *testing.T) {
 		},
 		Cmds: map[string]func(ts *testscript.TestScript, neg bool, args []string){
 			"exits": scriptExits, "small": scriptSmall, "columns": scriptColumns, "width": scriptWidth,
+			"mark": scriptMark, "worth": scriptWorth,
 		},
 	})
 }

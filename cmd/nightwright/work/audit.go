@@ -9,10 +9,14 @@ import (
 	"nightwright/scheduler/tables"
 )
 
-// Audit checks a plan's visits and totals afresh, from the survey alone.
+// Audit checks a plan's visits and totals afresh, from the survey alone and
+// the lost time that the plan knew of.
 func Audit(ctx context.Context, s *Survey, pt *tables.PlanTables, o Options) (*audit.Report, error) {
 	o.tell("audit", 0, 1)
-	r, err := audit.Check(ctx, audit.Input{Survey: s.Survey, Workers: o.Workers, Plan: claims(pt)})
+	if err := s.TakeLossesOf(ctx, pt); err != nil {
+		return nil, err
+	}
+	r, err := audit.Check(ctx, audit.Input{Survey: s.Survey, Losses: s.Losses, Workers: o.Workers, Plan: claims(pt)})
 	if err != nil {
 		return nil, err
 	}

@@ -10,6 +10,7 @@ import (
 
 	"nightwright/scheduler"
 	"nightwright/scheduler/audit"
+	"nightwright/scheduler/ledger"
 	"nightwright/scheduler/model"
 	"nightwright/scheduler/tables"
 )
@@ -27,6 +28,8 @@ type PlanResult struct {
 	Folder string
 	Tables *tables.PlanTables
 	Audit  *audit.Report
+	// Unrecorded says why the ledger doesn't have the plan; nil: it has.
+	Unrecorded error
 }
 
 // Efforts lists the efforts, least first.
@@ -55,6 +58,10 @@ func (ask *PlanAsk) folder(s *Survey) string {
 func Plan(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*PlanResult, error) {
 	dir := ask.folder(s)
 	if err := plannable(dir); err != nil {
+		return nil, err
+	}
+	knew, err := s.TakeLosses(ctx, ledger.Now)
+	if err != nil {
 		return nil, err
 	}
 	if err := s.OpenWindows(ctx, o); err != nil {
@@ -87,7 +94,8 @@ func Plan(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*PlanResult, 
 	if err := tables.WriteFolder(dir, pt, files); err != nil {
 		return nil, err
 	}
-	return &PlanResult{dir, pt, report}, nil
+	// The plan stands; a ledger that can't be written doesn't undo it.
+	return &PlanResult{dir, pt, report, s.enterPlan(ctx, dir, pt, knew, o)}, nil
 }
 
 // solve runs the optimiser. Only the caller's context, not the time limit,

@@ -26,6 +26,9 @@ func Sheet(ctx context.Context, s *Survey, pt *tables.PlanTables, telescope, nig
 	if err != nil {
 		return nil, err
 	}
+	if err := s.TakeLossesOf(ctx, pt); err != nil {
+		return nil, err
+	}
 	if err := s.OpenCalendar(ctx, o); err != nil {
 		return nil, err
 	}

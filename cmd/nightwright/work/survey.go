@@ -29,6 +29,10 @@ type Survey struct {
 	Calendar *constraints.Calendar // after OpenCalendar
 	Sky      *visibility.Sky       // after OpenWindows
 	Windows  *constraints.Windows  // after OpenWindows
+
+	Losses      [][]visibility.Interval // of each telescope, after TakeLosses; UTC, Unix s
+	lossesTaken bool
+	lossesUpTo  int64
 }
 
 // ReadSurvey reads a survey folder or file. A survey with faults is an
@@ -56,11 +60,12 @@ func (s *Survey) LeapWarning() string {
 	return fmt.Sprintf("the leap-second table is good until %s, the survey runs to %s; a leap second announced since would shift pointings by 15\"", day, s.LastNight)
 }
 
-// OpenCalendar works out the nights and open times.
+// OpenCalendar works out the nights and open times, less the losses that were
+// taken before.
 func (s *Survey) OpenCalendar(ctx context.Context, o Options) error {
 	if s.Calendar == nil {
 		o.tell("nights", 0, 1)
-		s.Calendar = constraints.NewCalendar(s.Survey, s.Exact, nil)
+		s.Calendar = constraints.NewCalendar(s.Survey, s.Exact, s.Losses)
 		o.tell("nights", 1, 1)
 	}
 	return ctx.Err()
