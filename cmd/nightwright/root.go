@@ -71,7 +71,7 @@ func (a *app) root() *cobra.Command {
 		return nil
 	}
 	for _, c := range []*cobra.Command{
-		a.demoCommand(), a.newCommand(), a.checkCommand(), a.almanacCommand(), a.gridCommand(),
+		a.demoCommand(), a.newCommand(), a.fieldsCommand(), a.checkCommand(), a.almanacCommand(), a.gridCommand(),
 		a.planCommand(), a.auditCommand(), a.sheetCommand(), a.recordCommand(), a.loseCommand(), a.ledgerCommand(), a.exportCommand(),
 	} {
 		root.AddCommand(c)

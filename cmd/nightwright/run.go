@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -63,7 +64,7 @@ func (a *app) exit(ctx context.Context, err error) int {
 			a.say("%s", line)
 		}
 		if n := fault.Faults(); n > 0 {
-			a.say("nightwright: %s in the survey; nothing was written", count(n, "fault"))
+			a.say("nightwright: %s in the %s; nothing was written", count(n, "fault"), cmp.Or(fault.Of, "survey"))
 		}
 		return exitInput
 	case !a.started: // cobra's own: unknown command, flag or argument

@@ -27,6 +27,7 @@ func (o Options) tell(phase string, done, total int) {
 type InputError struct {
 	Issues []surveyfile.Issue // faults and warnings, sorted by place; or
 	What   string             // one fault without a place
+	Of     string             // what the issues are about; "" is a survey
 }
 
 // Inputf makes an InputError of one sentence.
