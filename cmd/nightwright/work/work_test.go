@@ -5,6 +5,7 @@ import (
 	"encoding/json"
 	"errors"
 	"math"
+	"os"
 	"path/filepath"
 	"strings"
 	"testing"
@@ -15,7 +16,11 @@ import (
 // small reads the survey that the command's tests share.
 func small(t *testing.T) *Survey {
 	t.Helper()
-	s, err := ReadSurvey(filepath.Join("..", "testdata", "small"))
+	dir := filepath.Join(t.TempDir(), "small") // a copy: planning writes to the ledger beside it
+	if err := os.CopyFS(dir, os.DirFS(filepath.Join("..", "testdata", "small"))); err != nil {
+		t.Fatal(err)
+	}
+	s, err := ReadSurvey(dir)
 	if err != nil {
 		t.Fatal(err)
 	}
