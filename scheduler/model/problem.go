@@ -141,6 +141,34 @@ func (p *Problem) setOpen() {
 				}
 			}
 		}
+		p.partNights(t)
+	}
+}
+
+// partNights shortens a telescope's open time before a night that follows
+// without a break, as at the poles, by the longest gap there can be: nights are
+// filled apart, but the gap between them is needed where it is dark at the
+// Sun's transit. The ceiling's open time keeps its length.
+func (p *Problem) partNights(scope int) {
+	t := p.Scopes[scope].Telescope
+	longest := math.Max(t.Readout, t.Slew.Settle+mount.AxisTime(2*math.Pi, t.Slew.Rate, t.Slew.Acceleration)) + t.FilterChange
+	if t.Flip != nil {
+		longest += t.Flip.Time
+	}
+	for n := range p.Nights - 1 {
+		open, next := p.open[scope*p.Nights+n], p.open[scope*p.Nights+n+1]
+		if len(next) == 0 {
+			continue
+		}
+		latest := next[0].From - MicroCeil(longest)
+		for len(open) > 0 && open[len(open)-1].To > latest {
+			last := &open[len(open)-1]
+			if last.To = latest; last.To > last.From {
+				break
+			}
+			open = open[:len(open)-1]
+		}
+		p.open[scope*p.Nights+n] = open
 	}
 }
 
@@ -161,7 +189,7 @@ func (p *Problem) setGrids() {
 		site, n := i/p.Nights, i%p.Nights
 		from, to := math.Inf(1), math.Inf(-1)
 		for _, t := range p.Survey.Sites[site].Telescopes {
-			for _, o := range p.open[t*p.Nights+n] {
+			for _, o := range p.outer[t*p.Nights+n] {
 				from, to = math.Min(from, Sec(o.From)), math.Max(to, Sec(o.To))
 			}
 		}
