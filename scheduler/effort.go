@@ -9,6 +9,7 @@ type effort struct {
 	ceilingBin float64    // width of the start bins of the final ceiling, s
 	construct  float64    // theta of the construction
 	sweeps     []float64
+	iterations int // of small plans
 }
 
 // efforts by name.
@@ -22,6 +23,7 @@ var efforts = map[string]effort{
 		ceilingBin: 600,
 		construct:  1,
 		sweeps:     []float64{0.5, 0},
+		iterations: 50,
 	},
 	"normal": {
 		levels: []dual.Level{
@@ -33,6 +35,7 @@ var efforts = map[string]effort{
 		ceilingBin: 300,
 		construct:  1,
 		sweeps:     []float64{1, 0.7, 0.4, 0},
+		iterations: 600,
 	},
 	"thorough": {
 		levels: []dual.Level{
@@ -44,5 +47,6 @@ var efforts = map[string]effort{
 		ceilingBin: 150,
 		construct:  1,
 		sweeps:     []float64{1, 1, 0.8, 0.6, 0.4, 0.2, 0, 0},
+		iterations: 3000,
 	},
 }

@@ -88,6 +88,12 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 			c.report(model.Progress{Phase: phase, Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
 		})
 	}
+	s.Iterate(c.ctx, c.effort.iterations, func(done, of int) {
+		c.report(model.Progress{Phase: "iterations", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
+	})
+	s.KeepShares(c.ctx, func(done, of int) {
+		c.report(model.Progress{Phase: "shares", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
+	})
 	status := model.StepsDone
 	if err := c.ctx.Err(); err != nil {
 		status = model.Interrupted
@@ -95,9 +101,6 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 			status = model.TimeLimit
 		}
 	}
-	s.KeepShares(c.ctx, func(done, of int) {
-		c.report(model.Progress{Phase: "shares", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
-	})
 	plan := s.Plan()
 	told := shares(c.p, plan)
 	for i := range told {

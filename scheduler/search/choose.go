@@ -23,7 +23,7 @@ type chooser struct {
 func sortSpots(spots []spot) {
 	slices.SortFunc(spots, func(a, b spot) int {
 		return cmp.Or(cmp.Compare(a.start, b.start), cmp.Compare(b.profit, a.profit),
-			cmp.Compare(a.scope, b.scope), cmp.Compare(a.eject, b.eject))
+			cmp.Compare(a.scope, b.scope), cmp.Compare(a.eject[0], b.eject[0]))
 	})
 }
 

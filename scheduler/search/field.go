@@ -244,12 +244,9 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 		return false
 	}
 	mark := s.mark(sp.scope, sp.night)
-	if sp.eject >= 0 {
-		if !s.visits[sp.eject].alive || s.visits[sp.eject].want == int32(wi) {
-			return false
-		}
-		s.remove(sp.eject)
-		s.stats.Ejected++
+	if !pl.eject(sp.eject, int32(wi)) {
+		s.undoTo(mark)
+		return false
 	}
 	id := s.newVisit(int32(wi), sp.scope, sp.night)
 	for j, part := range parts {
@@ -263,10 +260,7 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 				return false
 			}
 			part = parts[j]
-			if part.eject >= 0 {
-				s.remove(part.eject)
-				s.stats.Ejected++
-			}
+			pl.eject(part.eject, int32(wi))
 		}
 		early, late, ok := s.shiftWindow(w, j, part, parts, lo, hi)
 		if !ok || !s.insert(id, j, part, early, late) {
@@ -278,6 +272,35 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 	}
 	s.stats.Inserted++
 	return true
+}
+
+// eject removes the visits that make room; false when one is gone already or
+// is the want's own.
+func (pl *placer) eject(e ejected, want int32) bool {
+	if pl.ownVisit(e, want) {
+		return false
+	}
+	for _, id := range e {
+		if id < 0 {
+			continue
+		}
+		if !pl.s.visits[id].alive {
+			return false
+		}
+		pl.s.remove(id)
+		pl.s.stats.Ejected++
+	}
+	return true
+}
+
+// ownVisit reports whether one of the visits is the want's.
+func (pl *placer) ownVisit(e ejected, want int32) bool {
+	for _, id := range e {
+		if id >= 0 && pl.s.visits[id].want == want {
+			return true
+		}
+	}
+	return false
 }
 
 // shiftWindow bounds the start of a step: the legal window it was found in,
@@ -325,7 +348,7 @@ func (pl *placer) nextStep(w *model.Want, wi, j int, before spot) (spot, bool) {
 	f.only = Range{}
 	best := -1
 	for i := range f.spots {
-		if e := f.spots[i].eject; e >= 0 && pl.s.visits[e].want == int32(wi) {
+		if pl.ownVisit(f.spots[i].eject, int32(wi)) {
 			continue
 		}
 		if best < 0 || f.spots[i].profit > f.spots[best].profit {

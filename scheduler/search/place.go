@@ -17,11 +17,19 @@ type spot struct {
 	profit float64 // C
 	scope  int32
 	night  int32
-	eject  int32 // visit that makes room, or -1
-	combo  int32 // of sets: the steps' spots
-	after  int32 // visit whose exposure comes before, or -1
-	step   int16 // that exposure's step
+	eject  ejected // visits that make room
+	combo  int32   // of sets: the steps' spots
+	after  int32   // visit whose exposure comes before, or -1
+	step   int16   // that exposure's step
 }
+
+// ejected is up to three visits that make room; -1 where there is none.
+type ejected [3]int32
+
+var nobody = ejected{-1, -1, -1}
+
+// holds reports whether a visit is among them.
+func (e ejected) holds(id int32) bool { return e[0] == id || e[1] == id || e[2] == id }
 
 // finder lists the spots of one step of a want: one state read, nothing
 // changed. Each worker has its own.
@@ -47,7 +55,10 @@ type finder struct {
 	lg     int64
 	probe  entry
 	budget int64
-	only   Range // when not zero, starts are looked for inside it alone
+	deep   int     // most entries that may make room together: 1, or up to 3
+	noise  float64 // part of a worth that chance adds or takes
+	salt   uint64  // what chance hangs on
+	only   Range   // when not zero, starts are looked for inside it alone
 }
 
 // Range is a stretch of starts [From, To], us.
@@ -176,8 +187,8 @@ func (f *finder) stretch(lo, hi int64) {
 			break
 		}
 		f.position(p, p, lo, hi) // free insertion
-		if p < m {
-			f.position(p, p+1, lo, hi) // list[p] makes room
+		for next := p + 1; next <= min(m, p+max(1, f.deep)); next++ {
+			f.position(p, next, lo, hi) // list[p:next] makes room
 		}
 	}
 }
@@ -190,7 +201,7 @@ func (f *finder) position(p, next int, lo, hi int64) {
 	m := len(list)
 	free, need := int64(0), f.length
 	lost := 0.0
-	eject := int32(-1)
+	eject := nobody
 	// Where the start can be, with least gaps.
 	from, to := lo, hi
 	if p > 0 {
@@ -202,21 +213,25 @@ func (f *finder) position(p, next int, lo, hi int64) {
 	if to < from {
 		return
 	}
-	if next > p {
-		e := &list[p]
+	for k := p; k < next; k++ {
+		e := &list[k]
 		v := &f.s.visits[e.visit]
 		if v.fixed {
 			return
 		}
-		eject = e.visit
-		lost = float64(v.credit) / scoreUnit
-		if r := f.s.rates[f.s.p.Wants[e.want].Program]; r != 0 {
+		free += e.length + n.gap[k]
+		if eject.holds(e.visit) {
+			continue // another exposure of the same set
+		}
+		eject[k-p] = e.visit
+		lost += float64(v.credit) / scoreUnit
+		w := &f.s.p.Wants[e.want]
+		if r := f.s.rates[w.Program]; r != 0 {
 			lost += r * f.s.visitSeconds(v)
 		}
-		if field := f.s.p.Wants[e.want].Field; f.s.got[field] == f.s.wanted[field] {
-			lost += float64(f.s.bonus[field]) / scoreUnit
+		if f.s.got[w.Field] == f.s.wanted[w.Field] {
+			lost += float64(f.s.bonus[w.Field]) / scoreUnit
 		}
-		free = e.length + n.gap[p]
 	}
 	// A bound before anything is computed in earnest.
 	seed := from
@@ -254,7 +269,7 @@ func (s *state) visitSeconds(v *visit) float64 {
 }
 
 // weigh works out gaps and pushes and notes the worth of the position.
-func (f *finder) weigh(p, next int, from, to, seed, free int64, lost float64, eject int32) {
+func (f *finder) weigh(p, next int, from, to, seed, free int64, lost float64, eject ejected) {
 	n := f.n
 	list := n.list
 	m := len(list)
@@ -305,7 +320,7 @@ func (f *finder) weigh(p, next int, from, to, seed, free int64, lost float64, ej
 }
 
 // note keeps the start if it is the best of its bin.
-func (f *finder) note(s int64, p, next int, left, right, used int64, lost float64, eject int32) {
+func (f *finder) note(s int64, p, next int, left, right, used int64, lost float64, eject ejected) {
 	q := f.quality(s)
 	if q < f.w.MinQuality {
 		return
@@ -319,6 +334,9 @@ func (f *finder) note(s int64, p, next int, left, right, used int64, lost float6
 	}
 	if s > right {
 		profit += f.n.pushRight(next, s-right) / scoreUnit
+	}
+	if f.noise > 0 {
+		profit += f.value * q * f.noise * f.chance(s)
 	}
 	if profit <= f.least {
 		return
@@ -337,4 +355,16 @@ func (f *finder) note(s int64, p, next int, left, right, used int64, lost float6
 		}
 	}
 	f.spots = append(f.spots, spot{start: s, profit: profit, scope: f.scope, night: f.night, eject: eject, after: after, step: step})
+}
+
+// chance returns a number in [-1, 1) that hangs on the salt, the want and the
+// start alone, so that it is the same whoever looks.
+func (f *finder) chance(s int64) float64 {
+	x := f.salt ^ uint64(s)*0x9e3779b97f4a7c15 ^ uint64(f.w.Field)<<32 ^ uint64(f.scope)<<56
+	x ^= x >> 30
+	x *= 0xbf58476d1ce4e5b9
+	x ^= x >> 27
+	x *= 0x94d049bb133111eb
+	x ^= x >> 31
+	return float64(x>>11)/(1<<52) - 1
 }

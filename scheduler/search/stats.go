@@ -6,7 +6,7 @@ import "nightwright/scheduler/model"
 type Stats struct {
 	Placed, Better, Undone     int64 // fields taken out and put back
 	Inserted, Refused, Ejected int64 // single visits
-	Sweeps                     int64
+	Sweeps, Iterated           int64
 }
 
 // List gives the counters in a fixed order.
@@ -15,6 +15,6 @@ func (s *Stats) List() []model.Stat {
 		{Name: "fields_placed", Value: s.Placed}, {Name: "fields_bettered", Value: s.Better},
 		{Name: "fields_undone", Value: s.Undone}, {Name: "visits_inserted", Value: s.Inserted},
 		{Name: "visits_refused", Value: s.Refused}, {Name: "visits_ejected", Value: s.Ejected},
-		{Name: "sweeps", Value: s.Sweeps},
+		{Name: "sweeps", Value: s.Sweeps}, {Name: "iterations", Value: s.Iterated},
 	}
 }
