@@ -71,13 +71,20 @@ func (r *Region) Place(v ephemeris.Vec, radius float64) Place {
 	return at
 }
 
-// areaOrder is the order of the smallest cells that Area looks at: 0.029 deg.
-const areaOrder = 11
+const (
+	// areaOrder is the order of the smallest cells that Area looks at: 0.029 deg.
+	areaOrder = 11
+	// areaCells bounds how many cells Area looks at in one order: a region
+	// with a ragged edge is looked at less closely.
+	areaCells = 120_000
+	// areaSamples is the number of sample points of a cell on the edge.
+	areaSamples = 8
+)
 
 // Area is the region's area, sr: of one shape alone by its closed form, else
 // by whole cells where they lie inside and sample points where the edge goes
 // through; good to 3e-5 sr for edges once round the sky, better for short
-// ones.
+// ones, and to a thousandth for the most ragged.
 func (r *Region) Area() float64 {
 	if len(r.Parts) == 1 && len(r.Exclude) == 0 {
 		return r.Parts[0].Shape.Area()
@@ -87,62 +94,54 @@ func (r *Region) Area() float64 {
 
 // Nothing reports whether no point of the region could be found: the same
 // search as Area's, up to the first point.
-func (r *Region) Nothing() bool {
-	a := areaSum{region: r, first: true}
+func (r *Region) Nothing() bool { return r.search(true) == 0 }
+
+func (r *Region) areaByCells() float64 { return r.search(false) }
+
+// search adds up the region's area, or just finds some of it.
+func (r *Region) search(some bool) float64 {
+	area, order := 0.0, 0
+	var edge, next []Cell
 	for face := range int64(12) {
-		a.cell(Cell{0, face})
+		next = append(next, Cell{0, face})
 	}
-	return !a.found()
-}
-
-func (r *Region) areaByCells() float64 {
-	a := areaSum{region: r}
-	for face := range int64(12) {
-		a.cell(Cell{0, face})
-	}
-	return a.cells*CellArea(areaOrder) + float64(a.hits)*CellArea(areaOrder)/areaSamples
-}
-
-// areaSamples is the number of sample points of a cell on the edge.
-const areaSamples = 4
-
-type areaSum struct {
-	region *Region
-	cells  float64 // of areaOrder, wholly inside
-	hits   int64   // sample points inside
-	seen   int64   // sample points so far
-	first  bool    // stop at the first point inside
-}
-
-func (a *areaSum) found() bool { return a.cells > 0 || a.hits > 0 }
-
-func (a *areaSum) cell(c Cell) {
-	if a.first && a.found() {
-		return
-	}
-	switch a.region.Place(c.Centre(), cellReach[c.Order]) {
-	case Apart:
-		return
-	case Within:
-		a.cells += float64(int64(1) << (2 * (areaOrder - c.Order)))
-		return
-	}
-	if c.Order < areaOrder {
-		for k := range int64(4) {
-			a.cell(Cell{c.Order + 1, c.Index*4 + k})
+	for ; ; order++ {
+		edge = edge[:0]
+		for _, c := range next {
+			switch r.Place(c.Centre(), cellReach[order]) {
+			case Within:
+				area += CellArea(order)
+			case Across:
+				edge = append(edge, c)
+			}
 		}
-		return
-	}
-	for range areaSamples {
-		// Two-dimensional golden steps: even over the cells of an edge, and
-		// in no step with their rows.
-		a.seen++
-		x := math.Mod(0.7548776662466927*float64(a.seen), 1)
-		y := math.Mod(0.5698402909980532*float64(a.seen), 1)
-		if a.region.Holds(c.Point(x, y)) {
-			a.hits++
+		if some && area > 0 || order == areaOrder || 4*len(edge) > areaCells {
+			break
+		}
+		next = next[:0]
+		for _, c := range edge {
+			for k := range int64(4) {
+				next = append(next, Cell{c.Order + 1, c.Index*4 + k})
+			}
 		}
 	}
+	hits, seen := 0, 0
+	for _, c := range edge {
+		for range areaSamples {
+			// Two-dimensional golden steps: even over the cells of an edge,
+			// and in no step with their rows.
+			seen++
+			x := math.Mod(0.7548776662466927*float64(seen), 1)
+			y := math.Mod(0.5698402909980532*float64(seen), 1)
+			if r.Holds(c.Point(x, y)) {
+				hits++
+			}
+		}
+		if some && hits > 0 {
+			break
+		}
+	}
+	return area + float64(hits)*CellArea(order)/areaSamples
 }
 
 // meets reports whether a circle may have a point in the region. No is
