@@ -128,6 +128,17 @@ func TestOverlapsFindTheLaterLine(t *testing.T) {
 	}
 }
 
+// What was recorded before and reaches into the time of a file counts, though
+// it starts long before.
+func TestOverlapsWithALongExposureOfBefore(t *testing.T) {
+	b := newBench(t)
+	b.must(head + "A1,C1,r,2027-03-09T02:00:00Z,2027-03-09T05:00:00Z,\n")
+	_, got := b.record(head+line("A2", "C1", "r", "04:30")+line("A2", "C1", "r", "05:00")+line("A2", "S1", "r", "04:30"), false)
+	if len(got) != 1 || !strings.HasPrefix(got[0], "night.csv:2: the exposure of C1 at 2027-03-09T04:30:00Z overlaps that of 2027-03-09T02:00:00Z (night.csv:2, recorded before)") {
+		t.Errorf("%v", got)
+	}
+}
+
 func TestCorrections(t *testing.T) {
 	b := newBench(t)
 	const h = "what,field,telescope,start_utc,end_utc,quality,why\n"
@@ -154,6 +165,7 @@ func TestCorrections(t *testing.T) {
 		{row("done", "A1", "0.5", ""), "A2 0.6"}, // the old file again
 		{row("correct", "A2", "0.7", ""), "A2 0.7"},
 		{row("correct", "A2", "0.6", "wrong field"), "A2 0.7"}, // an old correction again
+		{row("correct", "A2", "0.6", "so it was"), "A2 0.6"},   // with other words it's new
 		{row("withdraw", "", "", "shutter stuck"), ""},
 		{row("withdraw", "", "", "shutter stuck"), ""},
 		{row("correct", "A3", "0.8", "it wasn't"), "A3 0.8"},
@@ -179,8 +191,8 @@ func TestCorrections(t *testing.T) {
 	l := b.open()
 	defer l.Close()
 	all, err := l.records(t.Context(), l.db, "1")
-	if err != nil || len(all) != history || history != 6 {
-		t.Errorf("%d rows of history, %v; want one for each of the 6 steps that changed something", len(all), err)
+	if err != nil || len(all) != history || history != 7 {
+		t.Errorf("%d rows of history, %v; want one for each of the 7 steps that changed something", len(all), err)
 	}
 	b.sound()
 }
