@@ -66,8 +66,9 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	ascent := dual.NewAscent(c.p)
 	for i, lv := range c.effort.levels {
 		phase := fmt.Sprintf("prices %d of %d", i+1, len(c.effort.levels))
-		ascent.Run(c.ctx, lv, func(step, of int, bound float64) {
-			c.report(model.Progress{Phase: phase, Done: step, Total: of, Ceiling: bound})
+		ascent.Run(c.ctx, lv, func(step, of int, _ float64) {
+			// The coarse bound proves nothing: it isn't told as a ceiling.
+			c.report(model.Progress{Phase: phase, Done: step, Total: of})
 		})
 	}
 	c.report(model.Progress{Phase: "ceiling"})

@@ -232,7 +232,3 @@ func grow[T any](x []T, n int) []T {
 	}
 	return x[:n]
 }
-
-func (s *state) night(scope int32, n int32) *night {
-	return &s.nights[int(scope)*s.p.Nights+int(n)]
-}
