@@ -5,7 +5,6 @@ import (
 	"testing"
 
 	"nightwright/constraints/survey"
-	"nightwright/scheduler/trial"
 	"nightwright/visibility"
 )
 
@@ -36,7 +35,7 @@ func TestPolarNightsAreOneSequence(t *testing.T) {
 	transit := build(t, sv, 1).Calendar.Night(0, 0).To
 	for _, half := range []float64{105, 400, 1000} {
 		sv.Sites[0].Closures = []survey.Closure{{From: transit - 3*86400, To: transit - half}, {From: transit + half, To: transit + 3*86400}}
-		var k *trial.Kit = build(t, sv, 1)
+		k := build(t, sv, 1)
 		o := solve(t, k, 1, "normal", 1)
 		if c := legal(t, k, "polar", o.Plan.Exposures); c <= 0 || c > o.Ceiling {
 			t.Errorf("half %g: coverage %g, ceiling %g", half, c, o.Ceiling)
