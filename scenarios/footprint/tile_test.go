@@ -87,13 +87,24 @@ func TestWholeSkyWithoutGaps(t *testing.T) {
 			missed++
 		}
 	}
-	// On the meridians through gaps: between two circles of each row, where
-	// seams and stacks are thinnest.
-	for _, row := range wholeSky(degree / 2) {
-		ra := 2 * math.Pi * (row.shift + 0.5) / float64(row.count)
-		for k := range 40 {
-			if l.holds(Direction(ra, row.dec+degree*(float64(k)/20-1))) == 0 {
-				missed++
+	// On the meridians through the gaps of each row, towards the next: where
+	// their counts differ, the gaps of both meet somewhere.
+	rows := wholeSky(degree / 2)
+	for i := range len(rows) - 1 {
+		row, next := rows[i], rows[i+1]
+		if math.Abs(next.dec) < math.Abs(row.dec) {
+			row, next = next, row
+		}
+		gaps := 1 // staggered rows are the same at every gap
+		if row.count != next.count {
+			gaps = row.count
+		}
+		for g := range gaps {
+			ra := 2 * math.Pi * (float64(g) + row.shift + 0.5) / float64(row.count)
+			for k := range 60 {
+				if l.holds(Direction(ra, row.dec+(next.dec-row.dec)*float64(k)/60)) == 0 {
+					missed++
+				}
 			}
 		}
 	}
