@@ -125,9 +125,13 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 			if c <= 0 {
 				continue
 			}
-			d := 0.0
-			for _, g := range groups {
-				d += g.step[g.of[s]] * g.velocity[g.of[s]]
+			own := groups[0].velocity[groups[0].of[s]]
+			d := groups[0].step[groups[0].of[s]] * own
+			for _, g := range groups[1:] {
+				// Idle time elsewhere is no reason to sell a crowded hour cheap.
+				if v := g.velocity[g.of[s]]; v > 0 || own <= 0 {
+					d += g.step[g.of[s]] * v
+				}
 			}
 			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.scale*d)
 		}
