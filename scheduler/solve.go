@@ -37,6 +37,9 @@ type Params struct {
 
 // Solve plans the survey.
 func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error) {
+	if params.Effort == "" {
+		params.Effort = "normal"
+	}
 	effort, ok := efforts[params.Effort]
 	if !ok {
 		return nil, fmt.Errorf("scheduler: effort %q is not known; want quick, normal or thorough", params.Effort)

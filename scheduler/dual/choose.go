@@ -42,7 +42,7 @@ func (o *Oracle) above(sc *scratch, wi int, floor float64, picks []pick) (bound 
 	switch {
 	case w.PerNight > 0 && w.GapMin < 12*3600*model.Micro:
 		bound, picks = o.perNight(sc, wi, w, floor, picks)
-	case w.GapMin < o.bin:
+	case leastSpacing(w) < o.bin:
 		bound, picks = o.repeated(sc, wi, w, floor, picks)
 	default:
 		bound, picks = o.spaced(sc, wi, w, floor, picks)
@@ -113,7 +113,7 @@ func (o *Oracle) clean(sc *scratch) {
 
 // spaced solves the common case: at most n visits with a gap of at least a bin.
 func (o *Oracle) spaced(sc *scratch, wi int, w *model.Want, floor float64, picks []pick) (float64, []pick) {
-	gap := int32(min(floorDiv(w.GapMin, o.bin), int64(o.bins)))
+	gap := int32(min(floorDiv(leastSpacing(w), o.bin), int64(o.bins)))
 	n := int(w.Visits)
 	solve := func(mu float64) (float64, int) { return sc.interval(gap, mu) }
 	mu, full, bound := multiplier(solve, n, floor, o.Mu[wi])
@@ -124,6 +124,10 @@ func (o *Oracle) spaced(sc *scratch, wi int, w *model.Want, floor float64, picks
 	picks = o.trace(sc, n, picks)
 	return bound, picks
 }
+
+// leastSpacing is a want's gap before the problem rounded it up to a
+// millisecond, or a little less.
+func leastSpacing(w *model.Want) int64 { return max(0, w.GapMin-999) }
 
 // interval is the weighted interval programme over the gathered bins for one
 // multiplier: the best sum of (worth - mu) and the number of visits in it.
@@ -249,7 +253,7 @@ func (o *Oracle) repeated(sc *scratch, wi int, w *model.Want, floor float64, pic
 	n := int(w.Visits)
 	per := n
 	if w.GapMin > 0 {
-		per = min(n, int(o.bin/w.GapMin)+1)
+		per = min(n, int(o.bin/max(1, leastSpacing(w)))+1)
 	}
 	type cell struct {
 		worth float64

@@ -20,11 +20,9 @@ import (
 // with Q the upper profile of visibility.BoundGrid, linear in each cell.
 // Cost and Q are linear in s between the break points of starts.go, so
 // evaluating these (and the stretch's ends) is exact for the bound Q.
-// Two visits whose starts are at least gap apart lie in bins a < b with
-// (b - a) >= ceil(gap / width) - 1 ... the programme allows every such pair:
-// starts in bins a and b differ by less than (b - a + 1) widths, so
-// gap <= (b-a+1) width is necessary and the condition never forbids a legal
-// pair. At most `visits` are taken through a multiplier mu >= 0:
+// Starts in bins a <= b differ by less than (b - a + 1) widths, so two visits a
+// gap apart lie in bins with (b - a) >= floor(gap / width): the programme asks
+// for no more and never forbids a legal pair. At most `visits` are taken through a multiplier mu >= 0:
 // n mu + max over sets of sum (worth - mu) bounds the best of at most n.
 type Oracle struct {
 	p        *model.Problem

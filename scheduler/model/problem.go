@@ -33,7 +33,6 @@ type Problem struct {
 	edges     [][]visibility.MoonEdge // [site * Nights + night]
 	bonus     []float64               // [field]
 	MaxValue  float64                 // largest Want.Value, for scales
-	Unserved  float64                 // weight share of demands that no telescope qualifies for; they can't be got
 }
 
 // Want is one demand of one field.
