@@ -69,7 +69,7 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	ascent := dual.NewAscent(c.p)
 	for i, lv := range c.effort.levels {
 		phase := fmt.Sprintf("prices %d of %d", i+1, len(c.effort.levels))
-		ascent.Run(c.ctx, lv, func(step, of int, _ float64) {
+		ascent.Run(c.ctx, fit(c.p, lv), func(step, of int, _ float64) {
 			// The coarse bound proves nothing: it isn't told as a ceiling.
 			c.report(model.Progress{Phase: phase, Done: step, Total: of})
 		})
@@ -108,15 +108,18 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	plan := s.Plan()
 	told := shares(c.p, plan)
 	for i := range told {
-		if told[i].Breach > 0 {
-			ascent.Relax(int(told[i].Program))
-			relaxed = true
+		if told[i].Breach == 0 {
+			continue
 		}
-	}
-	if relaxed {
 		// A plan out of its share bounds is compared with plans that need not
 		// keep them either.
-		ascent.Restore(kept)
+		if !relaxed {
+			ascent.Restore(kept)
+		}
+		relaxed = true
+		ascent.Relax(int(told[i].Program))
+	}
+	if relaxed {
 		ceiling = ascent.Ceiling(c.effort.ceilingBin)
 	}
 	return &model.Outcome{

@@ -17,6 +17,7 @@ type Level struct {
 	Eta     float64 // first step size
 	EtaLast float64
 	Memory  float64 // part of the old direction kept each step
+	Fine    bool    // on the proving oracle, keeping the best prices met; Sample 1
 }
 
 // Block says how slots are grouped.
@@ -95,7 +96,13 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 	if lv.Steps == 0 || a.scale == 0 {
 		return
 	}
-	a.oracle.Coarse()
+	if lv.Fine {
+		a.oracle.Fine(fineBin)
+	} else {
+		a.oracle.Coarse()
+	}
+	best := math.Inf(1)
+	var kept Kept
 	groups := []*group{a.group(lv.Block, lv.Memory)}
 	for _, pb := range parents {
 		if pb.coarser(lv.Block) {
@@ -110,6 +117,9 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 		eta := lv.Eta * math.Pow(lv.EtaLast/lv.Eta, float64(step)/math.Max(1, float64(lv.Steps-1)))
 		a.oracle.Refresh()
 		bound := a.sweep(lv.Sample, step%lv.Sample)
+		if full := bound + a.capacityValue() - a.keepFreeValue() + a.shares.slack(); lv.Fine && full < best {
+			best, kept = full, a.Keep()
+		}
 		clear(load)
 		for _, l := range a.loads {
 			for s, x := range l {
@@ -139,21 +149,31 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue()+a.shares.slack())
 		}
 	}
+	if lv.Fine && !math.IsInf(best, 1) {
+		a.Restore(kept)
+	}
 	a.prices.integrate()
 }
 
+// fineBin is the width of the start bins of fine levels, s.
+const fineBin = 600
+
 // Kept is a state of the prices that Restore goes back to.
-type Kept struct{ rate, mu []float64 }
+type Kept struct{ rate, mu, low, high []float64 }
 
 // Keep returns the present prices and count multipliers.
 func (a *Ascent) Keep() Kept {
-	return Kept{append([]float64(nil), a.prices.rate...), append([]float64(nil), a.oracle.Mu...)}
+	return Kept{append([]float64(nil), a.prices.rate...), append([]float64(nil), a.oracle.Mu...),
+		append([]float64(nil), a.shares.low...), append([]float64(nil), a.shares.high...)}
 }
 
 // Restore goes back to kept prices, and to the least gaps that a proof needs.
 func (a *Ascent) Restore(k Kept) {
 	copy(a.prices.rate, k.rate)
 	copy(a.oracle.Mu, k.mu)
+	copy(a.shares.low, k.low)
+	copy(a.shares.high, k.high)
+	a.shares.rates(a.p, a.oracle.Share)
 	for t := range a.oracle.shapes {
 		for i := range a.oracle.shapes[t] {
 			a.oracle.shapes[t][i].busy = a.oracle.shapes[t][i].length + a.p.Scopes[t].LeastGap

@@ -12,6 +12,10 @@ import (
 
 const shelfUS = model.ShelfStep * model.Micro
 
+// openingEase is how long after the first open moment a window may begin and
+// still be taken to begin with it, us.
+const openingEase = 60 * model.Micro
+
 // coarseCosts tabulates the cost of a start on each slot edge.
 func (o *Oracle) coarseCosts() {
 	if len(o.costs) != len(o.prices.nights) {
@@ -142,14 +146,21 @@ func (o *Oracle) coarseScan(wi int, w *model.Want, step int, t int32, n int, fou
 	a := 1 - b
 	for _, win := range o.p.Windows.Of(int(w.Unit), int(scope.Class), n) {
 		wf, wt := o.p.Inward(win)
-		k0 := max(int(-floorDiv(-wf, shelfUS)-base), 0)
+		k0 := max(int(floorDiv(wf, shelfUS)-base), 0)
 		k1 := min(int(floorDiv(wt-sh.length, shelfUS)-base), len(costs)-1)
 		// Byte of the middle's slot for start k.
 		at := int(base) + shift - int(first)
 		for k := max(k0, -at); k <= k1 && k+at+1 < len(q); k++ {
-			if c := &costs[k]; !math.IsInf(c.cost, 1) {
-				found(k, c.at, value*(a*float64(q[k+at])+b*float64(q[k+at+1]))-c.cost)
+			c := &costs[k]
+			// Where open time begins, windows begin a moment later.
+			s := c.at
+			if s < wf && wf-s <= openingEase {
+				s = wf
 			}
+			if math.IsInf(c.cost, 1) || s < wf || s+sh.length > wt {
+				continue
+			}
+			found(k, s, value*(a*float64(q[k+at])+b*float64(q[k+at+1]))-c.cost)
 		}
 	}
 }

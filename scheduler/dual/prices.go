@@ -141,9 +141,19 @@ func (pr *Prices) integrate() {
 	})
 }
 
-// Least returns the least price in each telescope-night's open time, C per
-// second, by telescope and night.
-func (pr *Prices) Least() []float64 { return pr.leastRates(nil) }
+// Range returns the least and the greatest price in each telescope-night's open
+// time, C per second, by telescope and night.
+func (pr *Prices) Range() (least, most []float64) {
+	most = make([]float64, len(pr.nights))
+	for i := range pr.nights {
+		for j, k := range pr.nights[i].slots {
+			if pr.nights[i].open[j] {
+				most[i] = math.Max(most[i], pr.rate[k])
+			}
+		}
+	}
+	return pr.leastRates(nil), most
+}
 
 // leastRates returns the least price in each telescope-night's open time.
 func (pr *Prices) leastRates(out []float64) []float64 {

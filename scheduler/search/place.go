@@ -43,6 +43,8 @@ type finder struct {
 	spots  []spot
 	value  float64 // of a step at quality 1
 	extra  float64 // of its exposure time, for the shares
+	most   float64 // worth of the best moment of the night
+	dear   float64 // the night's greatest price, C per second, times theta
 	least  float64 // C: spots not above are of no use
 	w      *model.Want
 	step   int
@@ -95,6 +97,8 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	if limit <= least {
 		return from
 	}
+	f.most = f.value*s.p.Shelf.Top(class, nightIndex, st.Row) + f.extra
+	f.dear = s.theta * s.dearest[int(scope)*s.p.Nights+nightIndex]
 	var first int32
 	first, f.row = s.p.Shelf.Row(class, nightIndex, st.Row)
 	f.first = int64(first) * shelfUS
@@ -187,6 +191,10 @@ func (f *finder) stretch(lo, hi int64) {
 			break
 		}
 		f.position(p, p, lo, hi) // free insertion
+		// The least a neighbour would cost, against the most the spot can earn.
+		if p < m && f.most+f.dear*model.Sec(list[p].length+f.n.gap[p])-float64(list[p].credit)/scoreUnit <= f.least && f.deep <= 1 {
+			continue
+		}
 		for next := p + 1; next <= min(m, p+max(1, f.deep)); next++ {
 			f.position(p, next, lo, hi) // list[p:next] makes room
 		}

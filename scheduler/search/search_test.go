@@ -129,7 +129,9 @@ func TestChooseAgainstAllSubsets(t *testing.T) {
 type gratis struct{ n int }
 
 func (g gratis) At(int, int64) float64 { return 0 }
-func (g gratis) Least() []float64      { return make([]float64, g.n) }
+func (g gratis) Range() (least, most []float64) {
+	return make([]float64, g.n), make([]float64, g.n)
+}
 
 // picture is what a state says, without the order of unordered lists.
 type picture struct {

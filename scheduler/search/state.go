@@ -80,18 +80,20 @@ type state struct {
 	timeThen []int64   // time when it was marked
 	rates    []float64 // [program] worth of a second of exposure beside its credit, C: shares
 	time     []int64   // [program] exposure time in the plan, us
-	least    []float64 // least price in each telescope-night's open time, C per second
-	priced   float64   // sum of the nights' priced time, C
+	// Least and greatest price in each telescope-night's open time, C per second.
+	least, dearest []float64
+	priced         float64 // sum of the nights' priced time, C
 }
 
 // pricer gives the price of time; the dual's prices do.
 type pricer interface {
 	At(scope int, us int64) float64 // C per second
-	Least() []float64               // least of each telescope-night's open time
+	Range() (least, most []float64) // of each telescope-night's open time
 }
 
 func newState(p *model.Problem, price pricer) *state {
-	s := &state{p: p, price: price, least: price.Least()}
+	s := &state{p: p, price: price}
+	s.least, s.dearest = price.Range()
 	s.nights = make([]night, len(p.Scopes)*p.Nights)
 	s.of = make([][]int32, len(p.Wants))
 	s.rates, s.time = make([]float64, len(p.Survey.Programs)), make([]int64, len(p.Survey.Programs))
