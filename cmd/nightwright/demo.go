@@ -58,6 +58,6 @@ planned again, anything else is left alone.`,
 		p.planNext(r.Survey, r.Plan)
 		return p.flush()
 	})
-	f.add(c.Flags(), "normal")
+	f.add(c.Flags(), "quick")
 	return c
 }
