@@ -25,6 +25,25 @@ type entry struct {
 	filter        int16
 	east          bool
 	at, to        mount.Pointing // at its start and its end
+	known         knownGap
+}
+
+// knownGap is the gap before an entry as last worked out, and what it hangs on.
+type knownGap struct {
+	gap         int64
+	before      int32 // want of the one before
+	step        int16
+	start, then int64 // own start, and that of the one before
+}
+
+// gapBefore returns the needed gap between two neighbours, from memory while
+// neither has moved.
+func (s *state) gapBefore(scope int32, prev, e *entry) int64 {
+	k := &e.known
+	if k.gap == 0 || k.before != prev.want || k.step != prev.step || k.start != e.start || k.then != prev.start {
+		*k = knownGap{s.gapBetween(scope, prev, e), prev.want, prev.step, e.start, prev.start}
+	}
+	return k.gap
 }
 
 func (e *entry) end() int64 { return e.start + e.length }
@@ -200,7 +219,7 @@ func (s *state) refresh(scope int32, n *night) {
 			n.gap[0] = 0
 			n.first[0] = e.early
 		} else {
-			n.gap[i] = s.gapBetween(scope, &n.list[i-1], e)
+			n.gap[i] = s.gapBefore(scope, &n.list[i-1], e)
 			n.first[i] = max(e.early, n.first[i-1]+n.list[i-1].length+n.gap[i])
 		}
 		n.used += e.length + n.gap[i]
