@@ -33,6 +33,9 @@ type Params struct {
 	Effort   string // quick, normal (the default) or thorough
 	Seed     uint64
 	Progress func(model.Progress) // nil: none
+	// Prices, when not nil, ends the price search early, so that a time limit
+	// leaves time for the plan itself.
+	Prices context.Context
 }
 
 // Solve plans the survey.
@@ -48,7 +51,10 @@ func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error)
 	if err != nil {
 		return nil, err
 	}
-	c := &conductor{p: p, ctx: ctx, effort: effort, report: params.Progress}
+	c := &conductor{p: p, ctx: ctx, prices: ctx, effort: effort, report: params.Progress}
+	if params.Prices != nil {
+		c.prices = params.Prices
+	}
 	if c.report == nil {
 		c.report = func(model.Progress) {}
 	}
@@ -61,6 +67,7 @@ func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error)
 type conductor struct {
 	p      *model.Problem
 	ctx    context.Context
+	prices context.Context
 	effort effort
 	report func(model.Progress)
 }
@@ -69,16 +76,16 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	ascent := dual.NewAscent(c.p)
 	for i, lv := range c.effort.levels {
 		phase := fmt.Sprintf("prices %d of %d", i+1, len(c.effort.levels))
-		ascent.Run(c.ctx, fit(c.p, lv), func(step, of int, _ float64) {
+		ascent.Run(c.prices, fit(c.p, lv), func(step, of int, _ float64) {
 			// The coarse bound proves nothing: it isn't told as a ceiling.
 			c.report(model.Progress{Phase: phase, Done: step, Total: of})
 		})
 	}
 	c.report(model.Progress{Phase: "ceiling"})
-	ceiling := ascent.Ceiling(c.effort.ceilingBin)
+	ceiling := ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)
 	c.report(model.Progress{Phase: "ceiling", Done: 1, Total: 1, Ceiling: ceiling})
 	prices, kept, relaxed := ascent.Prices().List(), ascent.Keep(), false
-	ascent.Steer(c.ctx, c.effort.steer, func(step, of int, _ float64) {
+	ascent.Steer(c.prices, c.effort.steer, func(step, of int, _ float64) {
 		c.report(model.Progress{Phase: "steering", Done: step, Total: of, Ceiling: ceiling})
 	})
 	s := search.New(c.p, ascent.Prices(), ascent.Oracle().Mu, seed)
@@ -120,7 +127,7 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 		ascent.Relax(int(told[i].Program))
 	}
 	if relaxed {
-		ceiling = ascent.Ceiling(c.effort.ceilingBin)
+		ceiling = ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)
 	}
 	return &model.Outcome{
 		Plan: plan, Coverage: s.Coverage(), Ceiling: ceiling, Status: status,

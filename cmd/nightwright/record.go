@@ -14,7 +14,7 @@ func (a *app) recordCommand() *cobra.Command {
 	c := a.command("record SURVEY FILE", 0, &cobra.Command{
 		Short: "take what was really done and lost into the survey's ledger",
 		Long: `Takes a CSV file of exposures that were done, and of time that was lost, into
-ledger.sqlite in the survey folder: all of it or nothing. Every fault is told
+ledger.db in the survey folder: all of it or nothing. Every fault is told
 with its line. A row that was recorded before changes nothing, so that a file
 can be read again.
 

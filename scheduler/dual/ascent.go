@@ -116,7 +116,10 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 		}
 		eta := lv.Eta * math.Pow(lv.EtaLast/lv.Eta, float64(step)/math.Max(1, float64(lv.Steps-1)))
 		a.oracle.Refresh()
-		bound := a.sweep(lv.Sample, step%lv.Sample)
+		bound := a.sweep(ctx, lv.Sample, step%lv.Sample)
+		if ctx.Err() != nil {
+			break
+		}
 		if full := bound + a.capacityValue() - a.keepFreeValue() + a.shares.slack(); lv.Fine && full < best {
 			best, kept = full, a.Keep()
 		}
@@ -216,7 +219,7 @@ func (a *Ascent) capacityValue() float64 {
 
 // sweep solves every sample-th field from offset and leaves the loads; it
 // returns the sum of the wants' bounds.
-func (a *Ascent) sweep(sample, offset int) float64 {
+func (a *Ascent) sweep(ctx context.Context, sample, offset int) float64 {
 	sums := make([]float64, chunks)
 	o := a.oracle
 	fields := len(a.p.FieldWant) - 1
@@ -230,6 +233,9 @@ func (a *Ascent) sweep(sample, offset int) float64 {
 		for f := c * fields / chunks; f < (c+1)*fields/chunks; f++ {
 			if a.rank[f]%sample != offset {
 				continue
+			}
+			if f%32 == 0 && ctx.Err() != nil {
+				return
 			}
 			sums[c] += o.field(sc, f, func(wi int, picks []pick) { a.addLoad(c, wi, picks) })
 		}
@@ -379,17 +385,3 @@ func (a *Ascent) assign(of []int32, bl Block) int {
 	}
 	return len(a.p.Scopes) * groups * perDay
 }
-
-// pool hands scratch memory to workers.
-type pool struct{ free chan *scratch }
-
-func newPool(workers int, make_ func() *scratch) *pool {
-	p := &pool{free: make(chan *scratch, max(1, workers))}
-	for range max(1, workers) {
-		p.free <- make_()
-	}
-	return p
-}
-
-func (p *pool) get() *scratch  { return <-p.free }
-func (p *pool) put(s *scratch) { p.free <- s }

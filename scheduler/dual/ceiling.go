@@ -1,6 +1,7 @@
 package dual
 
 import (
+	"context"
 	"math"
 
 	"nightwright/scheduler/model"
@@ -16,9 +17,22 @@ import (
 // seconds. The result is rounded up by a relative 1e-9 and an absolute 1e-12,
 // far above the float64 error of sums of 1e6 terms below 1.
 func (a *Ascent) Ceiling(width float64) float64 {
+	return a.CeilingWithin(context.Background(), width)
+}
+
+// CeilingWithin is Ceiling, given up when the context ends: it then returns 1,
+// which bounds any coverage.
+func (a *Ascent) CeilingWithin(ctx context.Context, width float64) float64 {
 	a.oracle.Fine(width)
 	a.oracle.Refresh()
-	sum := a.sweep(1, 0) + a.capacityValue() - a.keepFreeValue() + a.shares.slack()
+	best := a.sweep(ctx, 1, 0)
+	if ctx.Err() != nil {
+		return 1
+	}
+	sum := best + a.capacityValue() - a.keepFreeValue() + a.shares.slack()
+	if sum <= 0 {
+		return 0 // not a rounding's worth above it: nothing can be got
+	}
 	return math.Min(1, sum*(1+1e-9)+1e-12)
 }
 

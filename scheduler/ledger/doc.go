@@ -1,6 +1,6 @@
 // Package ledger keeps what really happened to a survey: exposures that were
 // done, time that was lost and why, and the plans that were made. It is one
-// SQLite file in the survey's folder, ledger.sqlite.
+// SQLite file in the survey's folder, ledger.db.
 //
 // # What is promised
 //

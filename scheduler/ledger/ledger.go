@@ -17,7 +17,7 @@ import (
 )
 
 // FileName is the ledger's name in a survey folder.
-const FileName = "ledger.sqlite"
+const FileName = "ledger.db"
 
 // Wait is how long a writer waits for another one before it gives up.
 const Wait = 15 * time.Second

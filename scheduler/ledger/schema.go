@@ -131,7 +131,7 @@ func (l *Ledger) version(ctx context.Context, q asker) (int, error) {
 		return 0, nil
 	}
 	if id != applicationID {
-		return 0, &FileError{l.path, "it is a database, but no ledger", "want the ledger.sqlite that this program wrote"}
+		return 0, &FileError{l.path, "it is a database, but no ledger", "want the ledger.db that this program wrote"}
 	}
 	about := map[string]string{}
 	rows, err := q.QueryContext(ctx, "SELECT key, value FROM about")

@@ -36,8 +36,15 @@ func (x *Search) KeepShares(ctx context.Context, report func(done, of int)) {
 		}
 		x.Sweep(ctx, 0, report)
 	}
-	for p := range x.s.rates {
-		x.trim(int32(p), longest[p])
+	// Trimming one program shrinks the whole and can push another over: until
+	// none is. Each round drops a visit, so this ends.
+	for trimmed := true; trimmed; {
+		trimmed = false
+		for p := range x.s.rates {
+			if x.trim(int32(p), longest[p]) {
+				trimmed = true
+			}
+		}
 	}
 }
 
@@ -59,14 +66,15 @@ func (s *state) allSeconds() float64 {
 }
 
 // trim drops a program's visits of the least credit per second until its
-// share is at most its maximum and one visit.
-func (x *Search) trim(p int32, longest float64) {
+// share is at most its maximum and one visit, and reports whether any was.
+func (x *Search) trim(p int32, longest float64) bool {
 	s := x.s
 	most := x.p.Survey.Programs[p].ShareMax
 	over := func() bool { return model.Sec(s.time[p]) > most*s.allSeconds()+longest }
 	if most >= 1 || !over() {
-		return
+		return false
 	}
+	dropped := false
 	type item struct {
 		id   int32
 		rate float64
@@ -81,10 +89,12 @@ func (x *Search) trim(p int32, longest float64) {
 	slices.SortFunc(items, func(a, b item) int { return cmp.Or(cmp.Compare(a.rate, b.rate), cmp.Compare(a.id, b.id)) })
 	for _, it := range items {
 		if !over() {
-			return
+			break
 		}
+		dropped = true
 		s.begin()
 		s.remove(it.id)
 		s.commit()
 	}
+	return dropped
 }

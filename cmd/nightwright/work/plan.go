@@ -106,13 +106,20 @@ func solve(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*model.Outco
 		limited, cancel = context.WithTimeout(ctx, ask.TimeLimit)
 	}
 	defer cancel()
+	prices := limited
+	if ask.TimeLimit > 0 {
+		// Prices may take a third: a plan at rough prices beats none.
+		var stop context.CancelFunc
+		prices, stop = context.WithTimeout(limited, ask.TimeLimit/3)
+		defer stop()
+	}
 	seed := s.Seed
 	if ask.Seed != nil {
 		seed = *ask.Seed
 	}
 	out, err := scheduler.Solve(limited, scheduler.Input{
 		Survey: s.Survey, Sky: s.Sky, Calendar: s.Calendar, Windows: s.Windows, Workers: o.Workers,
-	}, scheduler.Params{Effort: ask.Effort, Seed: seed, Progress: o.Progress})
+	}, scheduler.Params{Effort: ask.Effort, Seed: seed, Progress: o.Progress, Prices: prices})
 	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
