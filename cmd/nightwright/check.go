@@ -33,6 +33,9 @@ impossible for every plan.`,
 		if err != nil {
 			return err
 		}
+		if m := s.MemoryNote(); m != "" {
+			a.note("%s", m)
+		}
 		r, err := work.Check(cmd.Context(), s, a.options())
 		if err != nil {
 			return err

@@ -66,6 +66,9 @@ Interrupted, it leaves the plan that stood there.`,
 		if err != nil {
 			return err
 		}
+		if m := s.MemoryNote(); m != "" {
+			a.note("%s", m)
+		}
 		began := time.Now()
 		r, err := work.Plan(cmd.Context(), s, ask, a.options())
 		if err != nil {
