@@ -51,6 +51,7 @@ const (
 	iterateNoise = 0.3   // of a worth
 	iterateHeat  = 0.004 // of the score: how much worse a step may be taken at first
 	iterateDeep  = 3     // visits that may make room together
+	iterateFull  = 600   // exposures up to which every step is taken
 	iterateMost  = 4000  // exposures: larger plans are swept, not iterated
 )
 
@@ -66,6 +67,10 @@ func (x *Search) Iterate(ctx context.Context, steps int, report func(done, of in
 	}
 	if steps == 0 || count == 0 || count > iterateMost {
 		return
+	}
+	// The more exposures a plan has, the dearer a step and the less it can find.
+	if count > iterateFull {
+		steps = max(1, steps*iterateFull/count)
 	}
 	s.theta = 0
 	clear(x.pl.mu)

@@ -18,6 +18,9 @@ import (
 // Sheet makes the list of one telescope for one night. Local times are those
 // of the site's time zone.
 func Sheet(ctx context.Context, s *Survey, pt *tables.PlanTables, telescope, night string, o Options) (*sheet.Sheet, error) {
+	if name := pt.Summary.Survey; name != s.Name {
+		return nil, Inputf("the plan is of the survey %q, not of %q; want the survey it was made from", name, s.Name)
+	}
 	t, err := s.TelescopeID(telescope)
 	if err != nil {
 		return nil, err
