@@ -20,6 +20,9 @@ import (
 var long = os.Getenv("NIGHTWRIGHT_LONG") != ""
 
 func rounds(usual, many int) int {
+	if testing.Short() {
+		return max(1, usual/5) // under the race detector
+	}
 	if long {
 		return many
 	}
@@ -131,8 +134,8 @@ func TestDemoPlanIsLegal(t *testing.T) {
 // TestSameBytesForAnyWorkers: plan, prices, ceiling and counters don't depend
 // on the number of workers, nor on what ran before.
 func TestSameBytesForAnyWorkers(t *testing.T) {
-	surveys := []*survey.Survey{demo(t, 3, 80)}
-	for seed := range uint64(3) {
+	surveys := []*survey.Survey{demo(t, 3, rounds(80, 80))}
+	for seed := range uint64(rounds(3, 30)) {
 		surveys = append(surveys, trial.Survey(seed+500))
 	}
 	for i, sv := range surveys {
