@@ -120,9 +120,25 @@ type Site struct {
 	Horizon     []HorizonPoint
 	Clear       []float64 // 12 monthly clear fractions, or nil
 	Persistence float64   // s, of the two-state sky; 0 when no weather is given
-	Closures    []Closure
-	Cost        float64
-	Telescopes  []int // ids
+	// Region names the sites that share weather; "" is none. Correlation is that
+	// of the open hours with those of another site of the region that has the
+	// same numbers, 0 to 1.
+	Region      string
+	Correlation float64
+	// Levels are how an open sky falls short of the best; what they leave of 1
+	// is an open sky at its best. LevelPersistence is their time scale, s.
+	Levels           []SkyLevel
+	LevelPersistence float64
+	Closures         []Closure
+	Cost             float64
+	Telescopes       []int // ids
+}
+
+// SkyLevel is a state of the open sky: thin cloud, or worse seeing.
+type SkyLevel struct {
+	Share      float64 // of the open hours, 0 to 1
+	Extinction float64 // of the cloud, mag, >= 0
+	Seeing     float64 // as a multiple of the best, >= 1
 }
 
 // HorizonPoint is a vertex of the horizon mask, ascending in azimuth in

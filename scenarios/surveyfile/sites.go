@@ -45,8 +45,7 @@ func (l *loader) site(m *mapping, id int) (s survey.Site, closures []*yaml.Node)
 	s.Cost, _ = m.number("cost", span{low: 0, high: 1e12})
 	if n := m.values["weather"]; n != nil {
 		if w := l.mapping(n, "sites.weather", "weather"); w != nil {
-			s.Clear = w.clear("clear")
-			s.Persistence, _ = w.duration("persistence", span{low: 0, high: 365 * daySeconds, openLow: true})
+			l.weather(w, &s)
 		}
 	}
 	s.Closures, closures = m.closures("closures")
