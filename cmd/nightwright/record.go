@@ -25,20 +25,24 @@ The head line names the columns, in any order. Of an exposure:
   quality                   the telescope's own, 0 to 1; it wins over the
                             computed one; below min_quality the exposure stays
                             on record and counts for nothing
-  site, night, visit, why   if you like
+  site, night, visit, note  if you like
 Of lost time: site or telescope; start_utc and end_utc, or night for a whole
-one; cause (weather, technical, people, other); why.
+one; cause (weather, technical, people, other); note.
 
-A file with a column field holds exposures, one with a column cause lost time.
-With a column what, a file holds both: done, lost, and corrections, which
-replace nothing in the ledger but are added to it:
-  correct   this is right of the exposure of that telescope and start
-  withdraw  the exposure of that telescope and start was not taken
-  regained  this time was not lost after all
-Or take a sheet's CSV, add a column done, mark what was taken with x, write the
-true times into it, and give --telescope.`,
+A column kind says done or lost in each row; without it a file with a column
+field holds exposures, and one with a column cause lost time. A sheet's CSV is
+such a file: write done over planned where the exposure was taken, or lost and a
+cause, put the true times in, and record it; rows that still say planned are
+passed over.
+
+A row is known by its telescope (or site) and start_utc. One that was recorded
+before with other words is refused. With --correct it is right, and what stood
+before stays in the ledger as replaced: done for another field, time or
+quality; lost for an exposure that wasn't taken, or for another end or cause.
+Time that wasn't lost at all is given back with 'nightwright lose --regained'.`,
 		Example: `  nightwright record mysurvey tonight.csv
-  nightwright record mysurvey sheet.csv --telescope C1
+  nightwright record mysurvey sheet.csv
+  nightwright record mysurvey mended.csv --correct
   nightwright record mysurvey old-season.csv --keep-unmatched`,
 	}, func(cmd *cobra.Command, args []string) error {
 		s, err := a.survey(args[0])
@@ -69,7 +73,8 @@ true times into it, and give --telescope.`,
 		return p.flush()
 	})
 	c.Flags().StringVar(&ask.Telescope, "telescope", "", "the telescope's `NAME`, for rows that have none")
-	c.Flags().BoolVar(&ask.Keep, "keep-unmatched", false, "keep exposures that overlap others or belong to no demand, as unmatched: they count for nothing")
+	c.Flags().BoolVar(&ask.Correct, "correct", false, "rows that differ from what was recorded of the same telescope and start are right")
+	c.Flags().BoolVar(&ask.KeepUnmatched, "keep-unmatched", false, "keep exposures that overlap others or belong to no demand, as unmatched: they count for nothing")
 	return c
 }
 
@@ -86,7 +91,7 @@ type recordSummary struct {
 	Lost      int    `json:"lost"`
 	Regained  int    `json:"regained"`
 	Seen      int    `json:"seen_before"`
-	Skipped   int    `json:"not_marked"`
+	Skipped   int    `json:"passed_over"`
 }
 
 func recordJSON(file string, r *work.RecordResult) recordSummary {
@@ -107,11 +112,11 @@ func (p *printer) recorded(file string, r *work.RecordResult) {
 	}
 	add(r.Done, "exposure", "done, from "+clock(r.FirstStart)+" to "+clock(r.LastEnd)+" UTC")
 	add(r.Corrected, "exposure", "corrected")
-	add(r.Withdrawn, "exposure", "withdrawn")
+	add(r.Withdrawn, "exposure", "taken back: not taken after all")
 	add(r.Unmatched, "exposure", "unmatched: kept, and counted for nothing")
 	add(r.Below, "exposure", "below min_quality: kept, and counted for nothing")
 	add(r.Lost, "period", "of lost time")
 	add(r.Regained, "period", "of time regained")
 	add(r.Seen, "row", "recorded before: nothing changed by it")
-	add(r.Skipped, "row", "passed over: not marked, or reserved time")
+	add(r.Skipped, "row", "passed over: neither done nor lost")
 }

@@ -13,10 +13,11 @@ import (
 	"nightwright/scheduler/ledger"
 )
 
-// scriptMark does to a sheet what people do: a column done, with a mark.
+// scriptMark does to a sheet what people do: done over planned. A table without
+// a column kind gets one.
 func scriptMark(ts *testscript.TestScript, neg bool, args []string) {
 	if neg || len(args) < 3 || len(args) > 4 {
-		ts.Fatalf("usage: mark FILE OUT MARK [COLUMN]")
+		ts.Fatalf("usage: mark FILE OUT WORD [COLUMN]")
 	}
 	rows, err := csv.NewReader(bytes.NewReader([]byte(ts.ReadFile(args[0])))).ReadAll()
 	ts.Check(err)
@@ -26,16 +27,23 @@ func scriptMark(ts *testscript.TestScript, neg bool, args []string) {
 			ts.Fatalf("%s has no column %s", args[0], args[3])
 		}
 	}
+	kind := slices.Index(rows[0], "kind")
 	var out bytes.Buffer
 	w := csv.NewWriter(&out)
 	for i, r := range rows {
-		mark := args[2]
+		word := args[2]
 		if i == 0 {
-			mark = "done"
+			word = "kind"
 		} else if empty >= 0 {
 			r[empty] = ""
 		}
-		ts.Check(w.Write(append(r, mark)))
+		switch {
+		case kind < 0:
+			r = append(r, word)
+		case i > 0 && r[kind] == "planned":
+			r[kind] = word
+		}
+		ts.Check(w.Write(r))
 	}
 	w.Flush()
 	ts.Check(w.Error())

@@ -29,7 +29,7 @@ func TestMain(m *testing.M) {
 //	exits N nightwright ...   run it and compare its exit code
 //	small DIR [SED]...        write testdata/small there, each OLD=NEW replaced
 //	columns FILE NAMES        compare the head line of a CSV file
-//	mark FILE OUT MARK [COL]  copy a CSV file with a column done, and the column COL emptied
+//	mark FILE OUT WORD [COL]  copy a CSV file with WORD over planned in its column kind, COL emptied
 //	worth                     the last stdout, JSON of the ledger, has all of the planned credit
 //	width N                   no line of the last stdout is wider, commands to paste apart
 func TestScripts(t *testing.T) {

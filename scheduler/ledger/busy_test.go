@@ -25,7 +25,7 @@ func TestWritersTakeTurns(t *testing.T) {
 				batch, faults := Read(strings.NewReader(text), fmt.Sprintf("w%d-%d.csv", w, k), "")
 				l, err := OpenWriter(b.path)
 				if err == nil {
-					_, more, err2 := l.Record(context.Background(), b.sv, b.exact, batch, Entry{}, false)
+					_, more, err2 := l.Record(context.Background(), b.sv, b.exact, batch, Entry{}, Terms{})
 					faults, err = append(faults, more...), errors.Join(err2, l.Close())
 				}
 				if err != nil || len(faults) > 0 {
@@ -68,14 +68,14 @@ func TestAWriterThatWaitedInVainIsTold(t *testing.T) {
 		t.Fatal(err)
 	}
 	batch := b.read(head + line("A2", "C1", "r", "05:00"))
-	_, _, err = second.Record(t.Context(), b.sv, b.exact, batch, Entry{}, false)
+	_, _, err = second.Record(t.Context(), b.sv, b.exact, batch, Entry{}, Terms{})
 	if !errors.Is(err, ErrBusy) || !strings.Contains(err.Error(), "nothing was written; try again when that one is done") {
 		t.Errorf("the second writer: %v", err)
 	}
 	if err := tx.Rollback(); err != nil {
 		t.Fatal(err)
 	}
-	if res, _, err := second.Record(t.Context(), b.sv, b.exact, batch, Entry{}, false); err != nil || res.Done != 1 {
+	if res, _, err := second.Record(t.Context(), b.sv, b.exact, batch, Entry{}, Terms{}); err != nil || res.Done != 1 {
 		t.Errorf("after the first was done: %+v, %v", res, err)
 	}
 }
@@ -87,7 +87,7 @@ func TestACancelledRecordWritesNothing(t *testing.T) {
 	defer l.Close()
 	ctx, cancel := context.WithCancel(t.Context())
 	cancel()
-	if _, _, err := l.Record(ctx, b.sv, b.exact, b.read(manyRows(100, time.Unix(1.7e9, 0))), Entry{}, false); !errors.Is(err, context.Canceled) {
+	if _, _, err := l.Record(ctx, b.sv, b.exact, b.read(manyRows(100, time.Unix(1.7e9, 0))), Entry{}, Terms{}); !errors.Is(err, context.Canceled) {
 		t.Errorf("cancelled: %v", err)
 	}
 	if n := len(b.done()); n != 1 {
@@ -99,7 +99,10 @@ func TestACancelledRecordWritesNothing(t *testing.T) {
 func TestDoneForIsDoneOfTheSurvey(t *testing.T) {
 	b := newBench(t)
 	b.must(manyRows(300, time.Unix(1.7e9, 0)))
-	b.must("what,field,telescope,start_utc,end_utc\nwithdraw,,C1,2023-11-14T22:13:20Z,\ncorrect,A5,C1,2023-11-14T22:20:00Z,2023-11-14T22:22:00Z\n")
+	mend := "kind,field,telescope,start_utc,end_utc,cause\nlost,,C1,2023-11-14T22:13:20Z,2023-11-14T22:14:00Z,other\ndone,A5,C1,2023-11-14T22:20:00Z,2023-11-14T22:22:00Z,\n"
+	if _, faults := b.recordOn(mend, Terms{Correct: true}); faults != nil {
+		t.Fatal(faults)
+	}
 	b.sv.Fields = b.sv.Fields[2:] // A1 and A2 are other surveys'
 	l := b.open()
 	defer l.Close()

@@ -156,7 +156,7 @@ func TestStrangersAfterTheSurveyChanged(t *testing.T) {
 
 func TestFollow(t *testing.T) {
 	b := newBench(t)
-	b.must("what,site," + head[:len(head)-1] + ",cause\n" +
+	b.must("kind,site," + head[:len(head)-1] + ",cause\n" +
 		"done,,A1,C1,r,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,0.5,\n" +
 		"done,,A2,C1,r,2027-03-09T05:00:00Z,2027-03-09T05:05:00Z,0.01,\n" +
 		"done,,A3,C1,r,2027-03-20T05:00:00Z,2027-03-20T05:05:00Z,0.9,\n" + // after the instant asked for

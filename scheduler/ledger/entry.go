@@ -45,7 +45,7 @@ func (r *record) holds() bool { return !r.replaced && r.what != Withdraw }
 // same reports whether two records say the same.
 func (r *record) same(o *record) bool {
 	quality := r.Quality == o.Quality || math.IsNaN(r.Quality) && math.IsNaN(o.Quality)
-	return quality && r.what == o.what && r.why == o.why && r.Telescope == o.Telescope && r.Start == o.Start && r.End == o.End &&
+	return quality && (r.what == Withdraw) == (o.what == Withdraw) && r.why == o.why && r.Telescope == o.Telescope && r.Start == o.Start && r.End == o.End &&
 		r.Field == o.Field && r.Program == o.Program && r.Demand == o.Demand && r.Filter == o.Filter && r.Site == o.Site &&
 		r.Set == o.Set && r.Visit == o.Visit
 }
@@ -66,7 +66,7 @@ func (r *record) differs(o *record) string {
 	case r.Quality != o.Quality && !(math.IsNaN(r.Quality) && math.IsNaN(o.Quality)):
 		return "another quality"
 	}
-	return "another reason"
+	return "another note"
 }
 
 // Loss is a row about lost time: lost, or regained. What holds follows from

@@ -221,7 +221,7 @@ func TestAFullDiskLeavesTheLedger(t *testing.T) {
 	b.path = filepath.Join(dir, FileName)
 	b.must(head + line("A1", "C1", "r", "04:00"))
 	l := b.open()
-	_, faults, err := l.Record(t.Context(), b.sv, b.exact, b.read(manyRows(5000, time.Unix(1.7e9, 0))), Entry{}, false)
+	_, faults, err := l.Record(t.Context(), b.sv, b.exact, b.read(manyRows(5000, time.Unix(1.7e9, 0))), Entry{}, Terms{})
 	if faults != nil || err == nil || !strings.Contains(err.Error(), "the disk is full; nothing was written") {
 		t.Errorf("a full disk: %v, %v", faults, err)
 	}
@@ -241,7 +241,7 @@ func TestAFullDiskLeavesTheLedger(t *testing.T) {
 	}
 	l = b.open()
 	defer l.Close()
-	if _, _, err = l.Record(t.Context(), b.sv, b.exact, b.read(head+line("A3", "C1", "r", "06:00")), Entry{}, false); err == nil {
+	if _, _, err = l.Record(t.Context(), b.sv, b.exact, b.read(head+line("A3", "C1", "r", "06:00")), Entry{}, Terms{}); err == nil {
 		t.Error("recorded on a full disk")
 	}
 	if n := len(b.done()); n != 2 {
@@ -357,7 +357,7 @@ func TestAReadOnlyFolderCanBeRead(t *testing.T) {
 	l, err := OpenWriter(b.path)
 	if err == nil {
 		defer l.Close()
-		_, _, err = l.Record(t.Context(), b.sv, b.exact, b.read(head+line("A2", "C1", "r", "05:00")), Entry{}, false)
+		_, _, err = l.Record(t.Context(), b.sv, b.exact, b.read(head+line("A2", "C1", "r", "05:00")), Entry{}, Terms{})
 	}
 	if err == nil || !strings.Contains(err.Error(), "want a folder that can be written to") {
 		t.Errorf("writing there: %v", err)

@@ -54,13 +54,18 @@ func (b *bench) read(text string) *Batch {
 // record records a text, and returns the faults as text.
 func (b *bench) record(text string, keep bool) (*Result, []string) {
 	b.Helper()
+	return b.recordOn(text, Terms{KeepUnmatched: keep})
+}
+
+func (b *bench) recordOn(text string, how Terms) (*Result, []string) {
+	b.Helper()
 	batch, faults := Read(strings.NewReader(text), "night.csv", "")
 	var res *Result
-	if faults == nil {
+	if batch != nil {
 		l := b.open()
 		defer l.Close()
 		var err error
-		if res, faults, err = l.Record(b.Context(), b.sv, b.exact, batch, Entry{Made: time.Unix(1.8e9, 0), Source: "night.csv", Program: "1.0"}, keep); err != nil {
+		if res, faults, err = l.Record(b.Context(), b.sv, b.exact, batch, Entry{Made: time.Unix(1.8e9, 0), Source: "night.csv", Program: "1.0"}, how); err != nil {
 			b.Fatal(err)
 		}
 	}

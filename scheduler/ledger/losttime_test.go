@@ -45,7 +45,7 @@ func TestLose(t *testing.T) {
 		want []visibility.Interval // of C1, from 04:00
 	}{
 		{Row{What: Lost, Site: "Cinder Ridge", Start: at(0), End: at(100), Cause: "weather"}, []visibility.Interval{{From: 0, To: 100}}},
-		{Row{What: Lost, Telescope: "C1", Start: at(50), End: at(150), Cause: "technical", Why: "dome"}, []visibility.Interval{{From: 0, To: 150}}},
+		{Row{What: Lost, Telescope: "C1", Start: at(50), End: at(150), Cause: "technical", Note: "dome"}, []visibility.Interval{{From: 0, To: 150}}},
 		{Row{What: Regained, Telescope: "C1", Start: at(20), End: at(60)}, []visibility.Interval{{From: 0, To: 20}, {From: 60, To: 150}}},
 		{Row{What: Lost, Telescope: "S1", Start: at(0), End: at(500), Cause: "people"}, []visibility.Interval{{From: 0, To: 20}, {From: 60, To: 150}}},
 	}

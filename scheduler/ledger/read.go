@@ -14,8 +14,8 @@ import (
 
 // The columns that Read understands. README.md tells them to the user.
 var columns = []string{
-	"what", "done", "field", "program", "demand", "filter", "site", "telescope", "night", "start_utc", "end_utc", "exposure_s",
-	"quality", "set", "visit", "cause", "why", "kind",
+	"kind", "telescope", "site", "field", "demand", "filter", "start_utc", "end_utc", "quality", "cause", "note",
+	"program", "night", "exposure_s", "set", "visit",
 }
 
 // passed are the columns of the plan's visits table and of a night's sheet
@@ -23,15 +23,14 @@ var columns = []string{
 var passed = []string{
 	"gap_before_s", "ra_deg", "dec_deg", "altitude_deg", "azimuth_deg", "airmass", "sun_altitude_deg", "moon_altitude_deg",
 	"moon_separation_deg", "sky_mag_arcsec2", "credit", "state",
-	"start_local", "sidereal_time", "note", "order", "set_step", "ra", "dec", "filter_change", "latest_start_utc", "latest_by",
+	"start_local", "sidereal_time", "order", "set_step", "ra", "dec", "filter_change", "latest_start_utc", "latest_by",
 }
 
 // form says how the rows of a file tell what they are.
 type form uint8
 
 const (
-	byWhat  form = iota + 1 // a column what
-	byMark                  // a sheet, its rows marked in a column done
+	byKind  form = iota + 1 // a column kind
 	allDone                 // all are exposures
 	allLost                 // all are lost time
 )
@@ -51,23 +50,24 @@ type reader struct {
 // byte-order mark, lines ending with LF or CRLF. The head line names the
 // columns, in any order:
 //
-//   - what: done, lost, correct, withdraw or regained. Without it the file holds
-//     exposures if it has a column field, and lost time if it has a column cause.
-//   - Or done: the file is a night's sheet, or a plan's visits, in which what was
-//     taken is marked (x, y, yes, 1, true, done); other rows are passed over.
+//   - kind: done or lost. Rows of a night's sheet that still say planned, held,
+//     recorded or reserved are passed over. Without it the file holds exposures if
+//     it has a column field, and lost time if it has a column cause.
 //   - Of exposures, by the names of the plan's visits table: field, telescope,
 //     start_utc, and end_utc or exposure_s; filter, program and demand where they
 //     aren't plain from the survey; site, night, quality (the telescope's own; it
-//     wins over the computed one), set (needed for exposures of sets), visit, why.
+//     wins over the computed one), set (needed for exposures of sets), visit, note.
 //   - Of lost time: site or telescope; start_utc and end_utc, or night for a whole
-//     one; cause (weather, technical, people, other), why.
+//     one; cause (weather, technical, people, other), note.
 //
 // The other columns of those tables are passed over; unknown ones are listed in
 // Batch.Ignored, unless they look like a slip of a known one. telescope, unless
 // it is "", stands for the telescope of rows of exposures that name none, as a
 // sheet's don't.
 //
-// With any fault the batch is nil and all faults are returned, by line.
+// The faults are returned by line. The batch is nil only when the head line is
+// at fault; with other faults it holds every row as far as it could be read, and
+// Record, which then takes nothing in, tells what is wrong with the names too.
 func Read(r io.Reader, file, telescope string) (*Batch, []Fault) {
 	d := &reader{faults: faults{file: file}, at: map[string]int{}, telescope: telescope, batch: &Batch{File: file}}
 	buffered := bufio.NewReaderSize(r, 1<<16)
@@ -98,10 +98,8 @@ func Read(r io.Reader, file, telescope string) (*Batch, []Fault) {
 		var bad *csv.ParseError
 		switch {
 		case errors.Is(err, io.EOF):
-			if list := d.all(); len(list) > 0 {
-				return nil, list
-			}
-			return d.batch, nil
+			d.batch.faults = d.faults
+			return d.batch, d.all()
 		case errors.As(err, &bad):
 			d.add(bad.Line, "want cells with commas between, quoted whole or not at all", "the row is no CSV: %v", bad.Err)
 			continue
@@ -157,22 +155,17 @@ func (d *reader) has(column string) bool { _, ok := d.at[column]; return ok }
 
 func (d *reader) setForm(line int) {
 	switch {
-	case d.has("what") && d.has("done"):
-		d.add(line, "want one of them", "there are both a column what and a column done")
-		return
-	case d.has("what"):
-		d.form = byWhat
-	case d.has("done"):
-		d.form = byMark
+	case d.has("kind"):
+		d.form = byKind
 	case d.has("field") && d.has("cause"):
-		d.add(line, "want a column what with done or lost in each row", "there are both a column field, of exposures, and a column cause, of lost time")
+		d.add(line, "want a column kind with done or lost in each row", "there are both a column field, of exposures, and a column cause, of lost time")
 		return
 	case d.has("field"):
 		d.form = allDone
 	case d.has("cause"):
 		d.form = allLost
 	default:
-		d.add(line, "want such as "+example, "it can't be told what the rows are: there is no column what, done, field or cause")
+		d.add(line, "want such as "+example, "it can't be told what the rows are: there is no column kind, field or cause")
 		return
 	}
 	need := func(want string, any ...string) {
@@ -181,7 +174,7 @@ func (d *reader) setForm(line int) {
 		}
 	}
 	const instant = "want it, with instants such as 2027-03-09T03:00:00Z"
-	if d.form == byMark || d.form == allDone {
+	if d.form == allDone {
 		need("want the field's name in each row", "field")
 		need(instant, "start_utc")
 		need("want when the exposure ended, or how long it was", "end_utc", "exposure_s")

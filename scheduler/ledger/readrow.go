@@ -23,11 +23,9 @@ func (d *reader) cell(column string) string {
 // wrong notes a fault of the present row.
 func (d *reader) wrong(want, what string, args ...any) { d.add(d.line, want, what, args...) }
 
-// marks are what may stand in the column done of a sheet.
-var (
-	marksDone = []string{"x", "y", "yes", "1", "true", "done", "ok"}
-	marksNot  = []string{"", "n", "no", "0", "false", "-"}
-)
+// sheetKinds stand in the column kind of a sheet where nothing was done yet,
+// or nothing new; such rows are passed over.
+var sheetKinds = []string{"planned", "held", "recorded", "reserved"}
 
 // row reads the present row.
 func (d *reader) row() {
@@ -49,7 +47,7 @@ func (d *reader) row() {
 	}
 	before := len(d.list) + d.more
 	r := Row{Line: d.line, What: what, Quality: math.NaN(), Night: noNight}
-	r.Telescope, r.Site, r.Why = d.name("telescope"), d.name("site"), d.name("why")
+	r.Telescope, r.Site, r.Note = d.name("telescope"), d.name("site"), d.name("note")
 	if text := d.cell("night"); text != "" {
 		day, err := survey.ParseDay(text)
 		if err != nil || day.Unix() < earliest || day.Unix() > latest {
@@ -63,35 +61,27 @@ func (d *reader) row() {
 	} else {
 		d.exposure(&r)
 	}
-	if len(d.list)+d.more == before {
-		d.batch.Rows = append(d.batch.Rows, r)
-	}
+	r.Faulty = len(d.list)+d.more > before
+	d.batch.Rows = append(d.batch.Rows, r)
 }
 
 // what tells what the row is; skip is true for one to pass over.
 func (d *reader) what() (what What, skip, ok bool) {
-	if strings.EqualFold(d.cell("kind"), "reserved") {
-		return "", true, true
-	}
 	switch d.form {
 	case allLost:
 		return Lost, false, true
-	case byMark:
-		mark := strings.ToLower(d.cell("done"))
-		if !slices.Contains(marksDone, mark) && !slices.Contains(marksNot, mark) {
-			d.wrong("want x where the exposure was taken, and nothing where it wasn't", "done is %s", quoted(d.cell("done")))
-			return "", false, false
-		}
-		return Done, slices.Contains(marksNot, mark), true
-	case byWhat:
-		what = What(strings.ToLower(d.cell("what")))
-		if !slices.Contains([]What{Done, Lost, Correct, Withdraw, Regained}, what) {
-			d.wrong("want done, lost, correct, withdraw or regained", "what is %s", quoted(d.cell("what")))
-			return "", false, false
-		}
-		return what, false, true
+	case allDone:
+		return Done, false, true
 	}
-	return Done, false, true
+	kind := strings.ToLower(d.cell("kind"))
+	if slices.Contains(sheetKinds, kind) {
+		return "", true, true
+	}
+	if kind != string(Done) && kind != string(Lost) {
+		d.wrong("want done or lost", "kind is %s", quoted(d.cell("kind")))
+		return "", false, false
+	}
+	return What(kind), false, true
 }
 
 // exposure reads what rows of exposures have.
@@ -109,9 +99,6 @@ func (d *reader) exposure(r *Row) {
 	}
 	if d.cell("start_utc") == "" {
 		d.wrong(instant, "start_utc is empty")
-	}
-	if r.What == Withdraw {
-		return
 	}
 	if r.Field == "" {
 		d.wrong("want the field's name", "field is empty")
@@ -134,11 +121,8 @@ func (d *reader) lost(r *Row) {
 		d.wrong("want a site, or one telescope", "neither site nor telescope is given")
 	}
 	r.Cause = strings.ToLower(d.cell("cause"))
-	if r.What == Lost && !slices.Contains(Causes(), r.Cause) {
+	if !slices.Contains(Causes(), r.Cause) {
 		d.wrong("want "+strings.Join(Causes(), ", "), "cause is %s", quoted(d.cell("cause")))
-	}
-	if r.What == Regained {
-		r.Cause = ""
 	}
 	start, end := d.cell("start_utc") != "", d.cell("end_utc") != ""
 	switch {

@@ -33,15 +33,26 @@ type recording struct {
 	faults
 	l    *Ledger
 	m    *matcher
-	keep bool
+	how  Terms
 	past map[key][]*record // all records of the telescopes and time in question
 	lost []*Loss
+	now  []*Loss // of those, what was neither corrected nor given back whole
 	new  []*record
 	gone []*Loss // new ones
 	Result
 }
 
-// key is what an exposure is known by.
+// Terms say what Record is to put up with.
+type Terms struct {
+	// KeepUnmatched records exposures that overlap others or belong to no
+	// demand, as unmatched: they count for nothing.
+	KeepUnmatched bool
+	// Correct lets a row take the place of a different one that was recorded
+	// for the same telescope (or site) and start.
+	Correct bool
+}
+
+// key is what a row is known by.
 type key struct {
 	telescope string
 	start     int64
@@ -52,16 +63,19 @@ var errFaults = errors.New("the rows have faults")
 
 // Record takes a file of rows in: all of it in one transaction, or nothing.
 //
-// An exposure is known by its telescope and start. One that was recorded before
-// with the same words changes nothing; with other words it is a fault, unless
-// the row says correct. Exposures of one telescope that overlap and those that
-// belong to no demand of the survey are faults; with keep they are recorded as
-// unmatched and count for nothing.
+// A row is known by its telescope (lost time: or its site) and start. One that
+// was recorded before with the same words changes nothing; with other words it
+// is a fault, unless the terms say that the file corrects: then it takes the
+// place of the older row, which stays on record. A correction that says lost of
+// the start of an exposure takes that exposure back. Exposures of one telescope
+// that overlap and those that belong to no demand of the survey are faults,
+// unless the terms say to keep them as unmatched.
 //
-// Faults are returned by line, and then nothing was written. The error is
-// about the file of the ledger (ErrBusy: another program held it), or ctx's.
-func (l *Ledger) Record(ctx context.Context, sv *survey.Survey, exact *visibility.Exact, b *Batch, e Entry, keep bool) (*Result, []Fault, error) {
-	return l.take(ctx, sv, exact, b, e, "record", keep)
+// All faults of the batch and of its names are returned by line, and then
+// nothing was written. The error is about the file of the ledger (ErrBusy:
+// another program held it), or ctx's.
+func (l *Ledger) Record(ctx context.Context, sv *survey.Survey, exact *visibility.Exact, b *Batch, e Entry, how Terms) (*Result, []Fault, error) {
+	return l.take(ctx, sv, exact, b, e, "record", how)
 }
 
 // Lose records one stretch of time: lost, or regained. What is wrong with it is
@@ -70,7 +84,7 @@ func (l *Ledger) Lose(ctx context.Context, sv *survey.Survey, exact *visibility.
 	if !r.What.ofTime() {
 		panic("ledger: Lose of a row that is not about time: " + string(r.What))
 	}
-	res, faults, err := l.take(ctx, sv, exact, &Batch{Rows: []Row{r}}, e, "lose", false)
+	res, faults, err := l.take(ctx, sv, exact, &Batch{Rows: []Row{r}}, e, "lose", Terms{})
 	if err != nil {
 		return nil, err
 	}
@@ -86,8 +100,9 @@ type RowError struct{ What, Want string }
 // Error is "what is wrong; what would be right".
 func (e *RowError) Error() string { return e.What + "; " + e.Want }
 
-func (l *Ledger) take(ctx context.Context, sv *survey.Survey, exact *visibility.Exact, b *Batch, e Entry, kind string, keep bool) (*Result, []Fault, error) {
-	c := &recording{faults: faults{file: b.File}, l: l, m: newMatcher(sv, exact), keep: keep, past: map[key][]*record{}}
+func (l *Ledger) take(ctx context.Context, sv *survey.Survey, exact *visibility.Exact, b *Batch, e Entry, kind string, how Terms) (*Result, []Fault, error) {
+	c := &recording{faults: b.faults, l: l, m: newMatcher(sv, exact), how: how, past: map[key][]*record{}}
+	c.file, c.list = b.File, slices.Clone(b.faults.list)
 	c.Skipped = b.Skipped
 	err := l.change(ctx, e.Program, func(tx *sql.Tx) error {
 		if err := c.load(ctx, tx, b); err != nil {
@@ -95,7 +110,7 @@ func (l *Ledger) take(ctx context.Context, sv *survey.Survey, exact *visibility.
 		}
 		for i := range b.Rows {
 			if r := &b.Rows[i]; r.What.ofTime() {
-				c.takeTime(r)
+				c.takeTime(r, kind == "record")
 			} else {
 				c.takeShot(r)
 			}
@@ -126,8 +141,8 @@ func (c *recording) load(ctx context.Context, tx *sql.Tx, b *Batch) error {
 	time := false
 	for i := range b.Rows {
 		r := &b.Rows[i]
-		if r.What.ofTime() {
-			time = true
+		time = time || r.What.ofTime()
+		if r.Faulty || r.Telescope == "" {
 			continue
 		}
 		s, ok := spans[r.Telescope]
@@ -152,7 +167,7 @@ func (c *recording) load(ctx context.Context, tx *sql.Tx, b *Batch) error {
 			return err
 		}
 		for i := range list {
-			c.lost = append(c.lost, &list[i])
+			c.addLoss(&list[i])
 		}
 	}
 	return nil
@@ -167,68 +182,52 @@ func sortedKeys[V any](m map[string]V) []string {
 	return keys
 }
 
-// takeTime takes one row about time.
-func (c *recording) takeTime(r *Row) {
-	l, tr := c.m.stretch(r)
-	if tr != nil {
-		c.add(r.Line, tr.want, "%s", tr.what)
-		return
-	}
-	touches := false
-	for _, o := range c.lost {
-		if o.same(l) {
-			c.Seen++
-			return
-		}
-		touches = touches || o.What == Lost && o.Site == l.Site && (o.Telescope == "" || l.Telescope == "" || o.Telescope == l.Telescope) && o.Start < l.End && l.Start < o.End
-	}
-	if l.What == Regained && !touches {
-		c.add(r.Line, "want a stretch of it", "no time was recorded as lost there between %s and %s", Instant(l.Start), Instant(l.End))
-		return
-	}
-	c.lost, c.gone = append(c.lost, l), append(c.gone, l)
-}
-
 // takeShot takes one row about an exposure.
 func (c *recording) takeShot(r *Row) {
-	k := key{r.Telescope, r.Start}
-	if r.What == Withdraw {
-		c.withdraw(r, k)
-		return
-	}
 	rec, none, bad := c.m.shot(r)
-	if bad != nil {
-		c.add(r.Line, bad.want, "%s", bad.what)
-		return
+	for _, tr := range bad {
+		c.add(r.Line, tr.want, "%s", tr.what)
 	}
 	rec.fresh = true
-	if slices.ContainsFunc(c.past[k], rec.same) {
+	if r.Faulty || len(bad) > 0 {
+		for _, tr := range none {
+			c.strange(rec, tr)
+		}
+		return
+	}
+	k := key{r.Telescope, r.Start}
+	last := c.last(k)
+	seen := last != nil && last.same(rec)
+	if !c.how.Correct { // any older word on it is a file read again
+		seen = slices.ContainsFunc(c.past[k], rec.same)
+	}
+	if seen {
 		c.Seen++
 		return
 	}
-	last := c.last(k)
 	switch {
-	case r.What == Correct && last == nil:
-		c.add(r.Line, "want done in the column what", "no exposure of %s at %s was recorded that could be corrected", r.Telescope, Instant(r.Start))
-		return
-	case r.What == Correct:
+	case last == nil:
+	case c.how.Correct:
+		rec.what = Correct
 		c.replace(last, rec)
-	case last != nil && last.what == Withdraw:
-		c.add(r.Line, "want correct in the column what to set it right again", "the exposure of %s at %s was recorded and withdrawn (%s)", r.Telescope, Instant(r.Start), c.place(last))
+	case last.what == Withdraw:
+		c.add(r.Line, "want --correct to set it right again", "the exposure of %s at %s was recorded and taken back (%s)", r.Telescope, Instant(r.Start), c.place(last))
 		return
-	case last != nil:
-		none = troublef("want the same, or correct in the column what", "the exposure of %s at %s is told otherwise in %s: %s", r.Telescope, Instant(r.Start), c.place(last), rec.differs(last))
+	default:
+		none = append(none, troublef("want the same, or --correct", "the exposure of %s at %s is told otherwise in %s: %s", r.Telescope, Instant(r.Start), c.place(last), rec.differs(last)))
 	}
-	if none != nil {
-		c.strange(rec, none)
+	for _, tr := range none {
+		c.strange(rec, tr)
 	}
 	c.past[k], c.new = append(c.past[k], rec), append(c.new, rec)
 }
 
 // strange marks a record that belongs to no demand, or refuses it.
 func (c *recording) strange(rec *record, tr *trouble) {
-	rec.Unmatched = tr.what
-	if !c.keep {
+	if rec.Unmatched == "" {
+		rec.Unmatched = tr.what
+	}
+	if !c.how.KeepUnmatched {
 		c.add(rec.Row, tr.want+"; or --keep-unmatched", "%s", tr.what)
 	}
 }
@@ -263,19 +262,11 @@ func (c *recording) replace(old, rec *record) {
 }
 
 // withdraw takes back an exposure that was recorded.
-func (c *recording) withdraw(r *Row, k key) {
-	if slices.ContainsFunc(c.past[k], func(o *record) bool { return o.what == Withdraw && o.why == r.Why }) {
-		c.Seen++
-		return
-	}
-	last := c.last(k)
-	if last == nil || last.what == Withdraw {
-		c.add(r.Line, "want the telescope and start_utc of one that was", "no exposure of %s at %s was recorded that could be withdrawn", r.Telescope, Instant(r.Start))
-		return
-	}
-	rec := &record{Exposure: last.Exposure, what: Withdraw, why: r.Why, fresh: true}
+func (c *recording) withdraw(r *Row, last *record) {
+	rec := &record{Exposure: last.Exposure, what: Withdraw, why: r.Note, fresh: true}
 	rec.Row, rec.ID, rec.Source = r.Line, 0, ""
 	c.replace(last, rec)
+	k := key{last.Telescope, last.Start}
 	c.past[k], c.new = append(c.past[k], rec), append(c.new, rec)
 }
 

@@ -38,7 +38,7 @@ func TestRecordKeepsWhatWasDone(t *testing.T) {
 
 func TestASeenRowChangesNothing(t *testing.T) {
 	b := newBench(t)
-	text := "what,site," + head[:len(head)-1] + ",cause\ndone,,A1,C1,r,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,0.5,\nlost,Salt Mesa,,,,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,,weather\n"
+	text := "kind,site," + head[:len(head)-1] + ",cause\ndone,,A1,C1,r,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,0.5,\nlost,Salt Mesa,,,,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,,weather\n"
 	if res := b.must(text); res.Done != 1 || res.Lost != 1 || res.Seen != 0 {
 		t.Fatalf("%+v", res)
 	}
@@ -79,8 +79,8 @@ func TestFaultsRefuseTheWholeFile(t *testing.T) {
 		`night.csv:7: telescope C1 has no filter "z"; want one of g, r` + or,
 		`night.csv:8: program pairs has no demand that such an exposure would serve; want one of colour in the column demand` + or,
 		`night.csv:9: the exposure of C1 at 2027-03-09T04:00:10Z overlaps that of 2027-03-09T04:00:00Z (night.csv:2, recorded before); want one exposure at a time` + or,
-		`night.csv:11: the exposure of C1 at 2027-03-09T07:00:00Z is told otherwise in line 10: field "A3"; want the same, or correct in the column what` + or,
-		`night.csv:12: the exposure of C1 at 2027-03-09T04:00:00Z is told otherwise in night.csv:2, recorded before: field "A1"; want the same, or correct in the column what` + or,
+		`night.csv:11: the exposure of C1 at 2027-03-09T07:00:00Z is told otherwise in line 10: field "A3"; want the same, or --correct` + or,
+		`night.csv:12: the exposure of C1 at 2027-03-09T04:00:00Z is told otherwise in night.csv:2, recorded before: field "A1"; want the same, or --correct` + or,
 	}
 	_, got := b.record(text, false)
 	if d := cmp.Diff(want, got); d != "" {
@@ -141,39 +141,35 @@ func TestOverlapsWithALongExposureOfBefore(t *testing.T) {
 
 func TestCorrections(t *testing.T) {
 	b := newBench(t)
-	const h = "what,field,telescope,start_utc,end_utc,quality,why\n"
-	row := func(what, field, quality, why string) string {
-		if what == "withdraw" {
-			return "withdraw,,C1,2027-03-09T04:00:00Z,,," + why + "\n"
-		}
-		return what + "," + field + ",C1,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z," + quality + "," + why + "\n"
+	const h = "kind,field,telescope,start_utc,end_utc,quality,cause,note\n"
+	row := func(field, quality, note string) string {
+		return "done," + field + ",C1,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z," + quality + ",," + note + "\n"
 	}
-	_, got := b.record(h+row("correct", "A1", "0.5", ""), false)
-	if len(got) != 1 || !strings.Contains(got[0], "was recorded that could be corrected; want done in the column what") {
-		t.Errorf("a correction of nothing: %v", got)
-	}
-	_, got = b.record(h+row("withdraw", "", "", ""), false)
-	if len(got) != 1 || !strings.Contains(got[0], "was recorded that could be withdrawn") {
-		t.Errorf("a withdrawal of nothing: %v", got)
+	lost := func(note string) string {
+		return "lost,,C1,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,,technical," + note + "\n"
 	}
 	steps := []struct {
-		text string
-		want string // field and quality that hold then
+		text    string
+		correct bool
+		want    string // field and quality that hold then
 	}{
-		{row("done", "A1", "0.5", ""), "A1 0.5"},
-		{row("correct", "A2", "0.6", "wrong field"), "A2 0.6"},
-		{row("done", "A1", "0.5", ""), "A2 0.6"}, // the old file again
-		{row("correct", "A2", "0.7", ""), "A2 0.7"},
-		{row("correct", "A2", "0.6", "wrong field"), "A2 0.7"}, // an old correction again
-		{row("correct", "A2", "0.6", "so it was"), "A2 0.6"},   // with other words it's new
-		{row("withdraw", "", "", "shutter stuck"), ""},
-		{row("withdraw", "", "", "shutter stuck"), ""},
-		{row("correct", "A3", "0.8", "it wasn't"), "A3 0.8"},
-		{row("withdraw", "", "", "it was"), ""},
+		{row("A1", "0.5", ""), true, "A1 0.5"}, // nothing to correct: it is done
+		{row("A2", "0.6", "wrong field"), true, "A2 0.6"},
+		{row("A1", "0.5", ""), false, "A2 0.6"}, // the old file again
+		{row("A2", "0.7", ""), true, "A2 0.7"},
+		{row("A2", "0.7", ""), true, "A2 0.7"}, // the correction again
+		{row("A2", "0.6", "so it was"), true, "A2 0.6"},
+		{lost("shutter stuck"), true, ""},
+		{lost("shutter stuck"), true, ""},
+		{row("A3", "0.8", "it wasn't"), true, "A3 0.8"},
 	}
 	history := 0
 	for i, s := range steps {
-		if res := b.must(h + s.text); res.Entry != 0 {
+		res, faults := b.recordOn(h+s.text, Terms{Correct: s.correct})
+		if faults != nil {
+			t.Fatalf("step %d: %v", i+1, faults)
+		}
+		if res.Entry != 0 {
 			history++
 		}
 		have := ""
@@ -184,29 +180,91 @@ func TestCorrections(t *testing.T) {
 			t.Errorf("after step %d: %q; want %q", i+1, have, s.want)
 		}
 	}
-	_, got = b.record(h+row("done", "A4", "", ""), false)
-	if len(got) != 1 || !strings.Contains(got[0], "was recorded and withdrawn (night.csv:2, recorded before); want correct in the column what to set it right again") {
-		t.Errorf("done again after a withdrawal: %v", got)
+	_, got := b.record(h+row("A4", "", ""), false)
+	if len(got) != 1 || !strings.Contains(got[0], "is told otherwise in night.csv:2, recorded before: field \"A3\"; want the same, or --correct") {
+		t.Errorf("another field without --correct: %v", got)
+	}
+	_, got = b.record(h+"lost,,C1,2027-03-09T04:00:00Z,2027-03-09T04:02:00Z,,weather,\n", false)
+	if len(got) != 1 || !strings.Contains(got[0], "C1 recorded an exposure at 2027-03-09T04:00:00Z") {
+		t.Errorf("lost without --correct: %v", got)
 	}
 	l := b.open()
 	defer l.Close()
 	all, err := l.records(t.Context(), l.db, "1")
-	if err != nil || len(all) != history || history != 7 {
-		t.Errorf("%d rows of history, %v; want one for each of the 7 steps that changed something", len(all), err)
+	if err != nil || len(all) != history || history != 6 {
+		t.Errorf("%d rows of history after %d changes, %v; want one for each of 6", len(all), history, err)
 	}
 	b.sound()
 }
 
-func TestACorrectionInTheSameFile(t *testing.T) {
+func TestDoneAgainAfterItWasTakenBack(t *testing.T) {
 	b := newBench(t)
-	res := b.must("what,field,telescope,start_utc,end_utc\ndone,A1,C1,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z\ncorrect,A2,C1,2027-03-09T04:00:00Z,2027-03-09T04:04:00Z\nwithdraw,,C1,2027-03-09T04:00:00Z,\ncorrect,A5,C1,2027-03-09T04:00:00Z,2027-03-09T04:03:00Z\n")
-	if res.Done != 1 || res.Corrected != 2 || res.Withdrawn != 1 {
-		t.Errorf("%+v", res)
+	b.must(head + line("A1", "C1", "r", "04:00"))
+	back := "kind,telescope,start_utc,end_utc,cause\nlost,C1,2027-03-09T04:00:00Z,2027-03-09T04:00:20Z,other\n"
+	if res, faults := b.recordOn(back, Terms{Correct: true}); faults != nil || res.Withdrawn != 1 || res.Lost != 1 {
+		t.Fatalf("%+v, %v", res, faults)
 	}
-	if got := b.done(); len(got) != 1 || got[0].Field != "A5" {
-		t.Errorf("%+v", got)
+	_, got := b.record(head+line("A2", "C1", "r", "04:00"), false)
+	if len(got) != 1 || !strings.Contains(got[0], "was recorded and taken back (night.csv:2, recorded before); want --correct to set it right again") {
+		t.Errorf("%v", got)
+	}
+}
+
+// Lost time is known by its place and start too.
+func TestCorrectedLosses(t *testing.T) {
+	b := newBench(t)
+	const h = "site,start_utc,end_utc,cause\n"
+	lost := func(end, cause string) string {
+		return h + "Salt Mesa,2027-03-09T04:00:00Z,2027-03-09T0" + end + ":00:00Z," + cause + "\n"
+	}
+	b.must(lost("6", "weather"))
+	_, got := b.record(lost("5", "weather"), false)
+	if len(got) != 1 || got[0] != "night.csv:2: the time lost at Salt Mesa from 2027-03-09T04:00:00Z is told otherwise: until 2027-03-09T06:00:00Z, weather; want the same; or --correct" {
+		t.Errorf("%v", got)
+	}
+	// Mended to an hour, and to the two again.
+	for _, end := range []string{"5", "6"} {
+		if res, faults := b.recordOn(lost(end, "people"), Terms{Correct: true}); faults != nil || res.Lost != 1 || res.Regained != 1 {
+			t.Fatalf("%+v, %v", res, faults)
+		}
+		l := b.open()
+		in, err := l.Losses(t.Context(), b.sv, Now)
+		l.Close()
+		if err != nil || len(in[1]) != 1 || in[1][0].To-in[1][0].From != float64(int(end[0]-'4')*3600) {
+			t.Errorf("to %s: %v, %v", end, in, err)
+		}
 	}
 	b.sound()
+}
+
+// The faults of rows and those of their names are told together.
+func TestAllFaultsAtOnce(t *testing.T) {
+	b := newBench(t)
+	_, got := b.record("kind,telescope,site,field,filter,start_utc,end_utc,cause\n"+
+		"done,C9,,A9,z,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,\n"+
+		"done,C1,Salt Mesa,A9,z,yesterday,2027-03-09T04:05:00Z,\n"+
+		"lost,C9,Salt,,,2027-03-09T04:00:00Z,2027-03-09T03:00:00Z,clouds\n"+
+		"gone,C1,,A1,r,2027-03-09T04:00:00Z,2027-03-09T04:05:00Z,\n", false)
+	want := []string{
+		`night.csv:2: there is no telescope "C9"; want one of C1, S1; or --keep-unmatched`,
+		`night.csv:2: there is no filter "z"; want one of g, r; or --keep-unmatched`,
+		`night.csv:2: there is no field "A9"; want a field of the survey; or --keep-unmatched`,
+		`night.csv:3: start_utc is "yesterday"; want UTC such as 2027-03-09T03:00:00Z, from 1972 to 2099`,
+		`night.csv:3: telescope C1 isn't at site "Salt Mesa"; want Cinder Ridge, or nothing`,
+		`night.csv:3: telescope C1 has no filter "z"; want one of g, r; or --keep-unmatched`,
+		`night.csv:3: there is no field "A9"; want a field of the survey; or --keep-unmatched`,
+		`night.csv:4: cause is "clouds"; want weather, technical, people, other`,
+		`night.csv:4: it ends at 2027-03-09T03:00:00Z, and starts at 2027-03-09T04:00:00Z; want end_utc after start_utc`,
+		`night.csv:4: there is no site "Salt"; want one of Cinder Ridge, Salt Mesa`,
+		`night.csv:4: there is no telescope "C9"; want one of C1, S1`,
+		`night.csv:5: kind is "gone"; want done or lost`,
+	}
+	if d := cmp.Diff(want, got); d != "" {
+		t.Errorf("-want +got:\n%s", d)
+	}
+	if n := len(b.done()); n != 0 {
+		t.Errorf("%d exposures went in", n)
+	}
 }
 
 // Nothing is deleted or changed, whoever asks.

@@ -9,7 +9,7 @@ import (
 // What says what a row is about.
 type What string
 
-// The kinds of rows, by the word that stands in the column what.
+// The kinds of rows, by the word that stands for them in the ledger.
 const (
 	Done     What = "done"     // an exposure was taken
 	Correct  What = "correct"  // what was recorded of an exposure was wrong; this is right
@@ -33,7 +33,7 @@ type Row struct {
 	Night     survey.Day // label; noNight: not given
 	Start     int64      // UTC, Unix microseconds; 0: not given
 	End       int64
-	Why       string
+	Note      string
 
 	// Of exposures.
 	Field, Program, Demand, Filter string
@@ -43,15 +43,18 @@ type Row struct {
 
 	// Of lost time.
 	Cause string
+
+	Faulty bool // the row has faults of its own
 }
 
 // noNight marks a row without a night.
 const noNight survey.Day = math.MinInt32
 
-// Batch is a file of rows that has no faults of its own.
+// Batch is a file of rows.
 type Batch struct {
 	File    string // as it was named
 	Rows    []Row
-	Skipped int      // rows of a sheet that weren't marked, or are of reserved time
+	Skipped int      // rows of a sheet that don't say done or lost
 	Ignored []string // columns that say nothing to a ledger and are in no table of this program
+	faults  faults   // of the rows themselves
 }

@@ -12,15 +12,15 @@ import (
 	"nightwright/visibility"
 )
 
-// csvColumns are the columns of WriteCSV. In a line of a reserved block all
-// after note are empty.
+// csvColumns are the columns of WriteCSV. The first are those of a file for the
+// ledger: with done in place of planned a sheet is one.
 var csvColumns = []string{
-	"kind", "start_utc", "end_utc", "start_local", "sidereal_time", "note",
-	"order", "visit", "set", "set_step", "field", "program", "demand", "ra", "dec", "ra_deg", "dec_deg", "filter", "filter_change", "exposure_s",
-	"altitude_deg", "azimuth_deg", "airmass", "moon_altitude_deg", "moon_separation_deg", "gap_before_s", "latest_start_utc", "latest_by", "state",
+	"kind", "telescope", "site", "field", "demand", "filter", "start_utc", "end_utc", "quality", "cause", "note",
+	"start_local", "sidereal_time", "order", "visit", "set", "set_step", "program", "ra", "dec", "ra_deg", "dec_deg", "filter_change", "exposure_s",
+	"altitude_deg", "azimuth_deg", "airmass", "moon_altitude_deg", "moon_separation_deg", "gap_before_s", "latest_start_utc", "latest_by",
 }
 
-// WriteCSV writes the sheet's lines as CSV: instants in RFC 3339, local ones
+// WriteCSV writes the sheet's lines as CSV that the ledger takes back: instants in RFC 3339, local ones
 // with their offset, numbers unrounded.
 func (s *Sheet) WriteCSV(w io.Writer) error {
 	c := csv.NewWriter(w)
@@ -40,16 +40,18 @@ func (s *Sheet) WriteCSV(w io.Writer) error {
 }
 
 func (s *Sheet) record(l *Line) []string {
-	out := make([]string, len(csvColumns))
 	instant := func(unix float64) string { return tables.Instant(int64(math.Round(unix * 1e6))) }
 	local := s.local(l.Start).Format(time.RFC3339Nano)
-	common := []string{"reserved", instant(l.Start), instant(l.End), local, visibility.FormatHours(l.SiderealTime, 1), l.Reserved}
+	lst := visibility.FormatHours(l.SiderealTime, 1)
 	v := l.Visit
 	if v == nil {
-		copy(out, common)
-		return out
+		out := []string{"reserved", s.Telescope, s.Site, "", "", "", instant(l.Start), instant(l.End), "", "", l.Reserved, local, lst}
+		return append(out, make([]string, len(csvColumns)-len(out))...)
 	}
-	common[0] = "exposure"
+	kind := v.State
+	if kind == "done" {
+		kind = "recorded" // it stands in the ledger already
+	}
 	set, step := "", ""
 	if v.Set != 0 {
 		set, step = strconv.FormatInt(v.Set, 10), strconv.Itoa(l.Step)
@@ -58,11 +60,11 @@ func (s *Sheet) record(l *Line) []string {
 	if l.FilterBefore != "" && l.FilterBefore != firstFilter {
 		change = l.FilterBefore + ">" + v.Filter
 	}
-	copy(out, append(common,
-		strconv.Itoa(l.Order), strconv.FormatInt(v.Visit, 10), set, step, v.Field, v.Program, v.Demand,
-		ra(v), dec(v), tables.Float(v.RA), tables.Float(v.Dec), v.Filter, change, tables.Float(v.Exposure),
+	return []string{
+		kind, s.Telescope, s.Site, v.Field, v.Demand, v.Filter, instant(l.Start), instant(l.End), "", "", "",
+		local, lst, strconv.Itoa(l.Order), strconv.FormatInt(v.Visit, 10), set, step, v.Program,
+		ra(v), dec(v), tables.Float(v.RA), tables.Float(v.Dec), change, tables.Float(v.Exposure),
 		tables.Float(v.Altitude), tables.Float(v.Azimuth), tables.Float(v.Airmass), tables.Float(v.MoonAltitude), tables.Float(v.MoonSeparation),
-		tables.Float(v.GapBefore), instant(l.Latest), string(l.LatestBy), v.State,
-	))
-	return out
+		tables.Float(v.GapBefore), instant(l.Latest), string(l.LatestBy),
+	}
 }

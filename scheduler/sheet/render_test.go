@@ -93,7 +93,7 @@ func TestCSV(t *testing.T) {
 			continue
 		}
 		seen++
-		if r[0] != "exposure" || r[column["field"]] != l.Visit.Field || r[column["order"]] != strconv.Itoa(seen) {
+		if r[0] != "planned" || r[column["telescope"]] != "C1" || r[column["field"]] != l.Visit.Field || r[column["order"]] != strconv.Itoa(seen) {
 			t.Errorf("%q", r)
 		}
 		if x, err := strconv.ParseFloat(r[column["altitude_deg"]], 64); err != nil || x != l.Visit.Altitude {

@@ -43,7 +43,7 @@ func (e *FaultsError) Error() string {
 type RecordAsk struct {
 	File      string
 	Telescope string // of rows that name none; "": each row must
-	Keep      bool   // keep what belongs to no demand as unmatched
+	ledger.Terms
 }
 
 // RecordResult says what was recorded.
@@ -70,7 +70,7 @@ func Record(ctx context.Context, s *Survey, ask RecordAsk, o Options) (*RecordRe
 		return nil, err
 	}
 	batch, faults := ledger.Read(bytes.NewReader(text), ask.File, ask.Telescope)
-	if len(faults) > 0 {
+	if batch == nil {
 		return nil, &FaultsError{ask.File, faults}
 	}
 	l, err := ledger.OpenWriter(s.LedgerPath())
@@ -80,7 +80,7 @@ func Record(ctx context.Context, s *Survey, ask RecordAsk, o Options) (*RecordRe
 	defer l.Close()
 	sum := sha256.Sum256(text)
 	e := ledger.Entry{Made: time.Now(), Source: ask.File, SHA256: hex.EncodeToString(sum[:]), Program: o.Version}
-	r, faults, err := l.Record(ctx, s.Survey, s.Exact, batch, e, ask.Keep)
+	r, faults, err := l.Record(ctx, s.Survey, s.Exact, batch, e, ask.Terms)
 	if err != nil {
 		return nil, ledgerFault(err)
 	}
@@ -151,7 +151,7 @@ func Lose(ctx context.Context, s *Survey, ask LoseAsk, o Options) (*RecordResult
 		return nil, in, Inputf("--to %s is not after --from %s", ask.To, ask.From)
 	}
 	r := ledger.Row{
-		What: ledger.Lost, Site: ask.Site, Telescope: ask.Telescope, Cause: ask.Cause, Why: ask.Why,
+		What: ledger.Lost, Site: ask.Site, Telescope: ask.Telescope, Cause: ask.Cause, Note: ask.Why,
 		Start: int64(math.Round(in.From * 1e6)), End: int64(math.Round(in.To * 1e6)),
 	}
 	if ask.Regained {
