@@ -14,11 +14,11 @@ const demoDir = "nightwright-demo"
 func (a *app) demoCommand() *cobra.Command {
 	var f planFlags
 	c := a.command("demo [DIR]", 1, &cobra.Command{
-		Short: "the whole job on a small survey: write, plan, audit, list",
+		Short: "the whole job on a small survey: write, plan, audit, list, report",
 		Long: `Writes the demo survey (3 invented sites, 30 nights, 300 fields) into DIR, plans
 it, has every visit audited, and writes the sheets of each telescope's first
-night. DIR is nightwright-demo unless given; a demo that is already there is
-planned again, anything else is left alone.`,
+night and the report. DIR is nightwright-demo unless given; a demo that is
+already there is planned again, anything else is left alone.`,
 		Example: `  nightwright demo
   nightwright demo /tmp/demo --effort thorough`,
 	}, func(cmd *cobra.Command, args []string) error {
@@ -36,19 +36,21 @@ planned again, anything else is left alone.`,
 			return err
 		}
 		a.endProgress()
-		a.note("written, planned, audited and listed in %.1f s", time.Since(began).Seconds())
+		a.note("written, planned, audited, listed and reported in %.1f s", time.Since(began).Seconds())
 		if a.asJSON {
 			return a.json(struct {
 				Survey string   `json:"survey_folder"`
 				Sheets []string `json:"sheets"`
+				Report string   `json:"report"`
 				planSummary
-			}{dir, r.Sheets, planJSON(r.Plan)})
+			}{dir, r.Sheets, r.Report, planJSON(r.Plan)})
 		}
 		p := a.printer()
 		p.plan(r.Survey, r.Plan)
 		p.line("")
 		p.line("Look at")
 		l := newList("<", "<")
+		l.add(r.Report, "the report: open it in a browser")
 		l.add(dir+"/survey.yaml", "the survey, every key explained")
 		l.add(r.Plan.Folder, "the plan: tables and plan.json")
 		for _, file := range r.Sheets {

@@ -111,6 +111,7 @@ func (p *printer) planNext(s *work.Survey, r *work.PlanResult) {
 		v := &r.Tables.Visits[0]
 		p.line("  nightwright sheet %s %s --telescope %s --night %s", quote(s.Path), quote(r.Folder), quote(v.Telescope), tables.Date(v.Night))
 	}
+	p.line("  nightwright report %s", quote(r.Folder))
 	p.line("  nightwright audit %s %s", quote(s.Path), quote(r.Folder))
 	p.line("  nightwright export %s --as csv", quote(r.Folder))
 }

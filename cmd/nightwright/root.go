@@ -72,7 +72,7 @@ func (a *app) root() *cobra.Command {
 	}
 	for _, c := range []*cobra.Command{
 		a.demoCommand(), a.newCommand(), a.fieldsCommand(), a.checkCommand(), a.almanacCommand(), a.gridCommand(),
-		a.planCommand(), a.auditCommand(), a.sheetCommand(), a.recordCommand(), a.loseCommand(), a.ledgerCommand(), a.exportCommand(),
+		a.planCommand(), a.auditCommand(), a.sheetCommand(), a.recordCommand(), a.loseCommand(), a.ledgerCommand(), a.reportCommand(), a.exportCommand(),
 	} {
 		root.AddCommand(c)
 	}

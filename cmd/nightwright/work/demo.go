@@ -14,10 +14,11 @@ type DemoResult struct {
 	Survey *Survey
 	Plan   *PlanResult
 	Sheets []string // text files; .csv and .html stand beside them
+	Report string   // the page
 }
 
 // Demo writes the demo survey into a folder, plans it, audits the plan, and
-// writes the sheets of each telescope's first night. A folder that already
+// writes the sheets of each telescope's first night and the report. A folder that already
 // holds the demo, unchanged, is used again; any other that isn't empty is
 // refused.
 func Demo(ctx context.Context, dir string, ask PlanAsk, o Options) (*DemoResult, error) {
@@ -39,7 +40,11 @@ func Demo(ctx context.Context, dir string, ask PlanAsk, o Options) (*DemoResult,
 	if err != nil {
 		return nil, err
 	}
-	return &DemoResult{s, plan, sheets}, nil
+	page, err := s.report(ctx, plan.Tables, ReportAsk{Out: reportFile(plan.Folder)}, o)
+	if err != nil {
+		return nil, err
+	}
+	return &DemoResult{s, plan, sheets, page.Page}, nil
 }
 
 // demoFolder makes sure that a folder holds the demo survey.

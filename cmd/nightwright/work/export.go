@@ -2,13 +2,11 @@ package work
 
 import (
 	"io"
-	"path/filepath"
 	"strings"
 	"time"
 
 	"nightwright/constraints/survey"
 	"nightwright/scenarios/formats"
-	"nightwright/scenarios/surveyfile"
 	"nightwright/scheduler/tables"
 )
 
@@ -125,25 +123,11 @@ func openPlan(dir string, pt *tables.PlanTables, stamp string) (formats.Plan, er
 		}
 		p.Stamp = at
 	}
-	files, err := tables.ReadSurvey(dir)
+	sv, err := planSurvey(dir)
 	if err != nil {
-		return p, &InputError{What: err.Error()}
+		return p, err
 	}
-	// The survey file is survey.yaml, or the only other YAML file beside it.
-	name := ""
-	for _, f := range files {
-		if ext := filepath.Ext(f.Name); f.Name == surveyfile.FileName || name == "" && (ext == ".yaml" || ext == ".yml") {
-			name = f.Name
-		}
-	}
-	if name == "" {
-		return p, Inputf("%s keeps no survey file; want a plan folder as 'nightwright plan SURVEY' writes it", dir)
-	}
-	sv, _, issues := surveyfile.Load(filepath.Join(dir, "survey", filepath.FromSlash(name)))
-	if sv == nil {
-		return p, &InputError{Issues: issues}
-	}
-	p.Survey = sv
+	p.Survey = sv.Survey
 	return p, nil
 }
 

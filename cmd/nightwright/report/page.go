@@ -1,0 +1,241 @@
+package report
+
+import (
+	_ "embed"
+	"fmt"
+	"html/template"
+	"io"
+	"math"
+	"strconv"
+	"strings"
+
+	"nightwright/cmd/nightwright/draw"
+	"nightwright/scheduler/tables"
+)
+
+//go:embed report.html.tmpl
+var pageText string
+
+var pageTemplate = template.Must(template.New("report").Parse(pageText))
+
+// page is what the template shows; texts are ready to stand there.
+type page struct {
+	Title, Nights, Lead string
+	Style               template.CSS
+	Facts               []fact
+	Limits              []string
+	Warnings            []string
+	Programs, Scopes    [][]string
+	Short               [][]string
+	ShortMore           int
+	Wishes              string
+	Forecast            []string
+	Chances             [][]string
+	NetworkRows         [][]string
+	Origin              []fact
+	Files               [][]string
+	Night               string
+
+	Sky, Balance, Calendar, Lanes, Progress, Cadence, Networks template.HTML
+}
+
+type fact struct{ Name, Text, Note string }
+
+// inline makes a picture part of the page. Its texts are escaped where it is
+// written.
+func inline(c *draw.Canvas) template.HTML {
+	return template.HTML(c.Inline()) //nolint:gosec // our own SVG; every text in it went through Escape
+}
+
+// WriteHTML writes the report as one page.
+func (r *Report) WriteHTML(w io.Writer) error {
+	if err := pageTemplate.Execute(w, &r.model); err != nil {
+		return fmt.Errorf("report: %w", err)
+	}
+	return nil
+}
+
+func percent(x float64, decimals int) string {
+	return strconv.FormatFloat(100*x, 'f', decimals, 64) + " %"
+}
+
+func part(a, b float64) string {
+	if b == 0 {
+		return "-"
+	}
+	return percent(a/b, 1)
+}
+
+func hours(x float64) string { return group(strconv.FormatFloat(x, 'f', 1, 64)) }
+
+func whole(n int64) string { return group(strconv.FormatInt(n, 10)) }
+
+// group puts a comma between thousands.
+func group(text string) string {
+	head, tail, dot := strings.Cut(text, ".")
+	for k := len(head) - 3; k > 0 && head[k-1] != '-'; k -= 3 {
+		head = head[:k] + "," + head[k:]
+	}
+	if dot {
+		return head + "." + tail
+	}
+	return head
+}
+
+func decimals4(x float64) string { return strconv.FormatFloat(x, 'f', 4, 64) }
+
+// millionths writes a price in 1e-6 of coverage an hour.
+func millionths(x float64) string { return group(strconv.FormatFloat(math.Round(x*1e6), 'f', 0, 64)) }
+
+// head fills in all but the pictures.
+func (m *page) head(in *Input, g *gathered) {
+	s := &in.Tables.Summary
+	m.Title, m.Nights = s.Survey, s.FirstNight+" to "+s.LastNight
+	m.Style = template.CSS(draw.StyleSheet()) //nolint:gosec // constants of package draw
+	m.Lead = fmt.Sprintf("The plan covers %s of what is wanted. No legal plan can cover more than %s: at most %s of that is left to find.",
+		percent(s.Coverage, 1), percent(s.Ceiling, 1), percent(s.Gap, 1))
+	m.Facts = []fact{
+		{"Coverage", decimals4(s.Coverage), "weighted quality got, of all that is wanted"},
+		{"Ceiling", decimals4(s.Ceiling), "proven: no legal plan exceeds it"},
+		{"Gap", percent(s.Gap, 1), "what the plan is from the ceiling, at most"},
+		{"Visits", whole(s.VisitsGot), "of " + whole(s.VisitsWanted) + " wanted"},
+		{"Fields finished", whole(s.FieldsFinished), "of " + whole(s.FieldsWanted)},
+		{"Hours used", hours(s.Hours.Used), "of " + hours(s.Hours.Open) + " open (" + part(s.Hours.Used, s.Hours.Open) + "); dark " + hours(s.Hours.Dark)},
+	}
+	if s.Status != "steps_done" {
+		m.Warnings = append(m.Warnings, "The search was cut short ("+s.Status+"): a longer one may do better.")
+	}
+	m.limits(in)
+	for _, p := range s.Programs {
+		bounds := ""
+		if p.ShareMin > 0 || p.ShareMax < 1 {
+			bounds = percent(p.ShareMin, 0) + " to " + percent(p.ShareMax, 0)
+		}
+		m.Programs = append(m.Programs, []string{p.Program, whole(p.VisitsGot), whole(p.VisitsWanted), whole(p.FieldsFinished), whole(p.FieldsWanted),
+			decimals4(p.Coverage), hours(p.ExposureHours), percent(p.Share, 1), bounds})
+		if p.ShareBreach != 0 {
+			m.Warnings = append(m.Warnings, fmt.Sprintf("%s misses its share by %s: %s", p.Program, percent(math.Abs(p.ShareBreach), 1), p.ShareWhy))
+		}
+	}
+	m.telescopes(in)
+	m.short(in)
+	m.origin(in)
+	m.outside(in)
+}
+
+// limits says what keeps the plan from covering more.
+func (m *page) limits(in *Input) {
+	s := &in.Tables.Summary
+	missing := unfinished(in.Tables.Fields)
+	m.Limits = append(m.Limits, fmt.Sprintf("%s of the open time is used; the rest is idle, kept free, or too short for a visit.", part(s.Hours.Used, s.Hours.Open)))
+	count, lost := map[string]int{}, map[string]float64{}
+	total := 0.0
+	for i := range in.Tables.Fields {
+		f := &in.Tables.Fields[i]
+		total += f.Weight
+		if f.VisitsPlanned+f.VisitsDone < f.VisitsWanted {
+			count[f.LimitedBy]++
+			lost[f.LimitedBy] += f.Weight * float64(f.VisitsWanted-f.VisitsPlanned-f.VisitsDone) / float64(f.VisitsWanted)
+		}
+	}
+	if len(missing) == 0 {
+		m.Limits = append(m.Limits, "Every field gets all its visits; what coverage lacks is quality: airmass, moonlight and twilight.")
+		return
+	}
+	for _, word := range tables.Limits() {
+		if n := count[word]; n > 0 && limitWords[word] != "" {
+			m.Limits = append(m.Limits, fmt.Sprintf("%s of %s fields miss visits because %s (%s of all weight).",
+				whole(int64(n)), whole(int64(len(in.Tables.Fields))), limitWords[word], part(lost[word], total)))
+		}
+	}
+	got, quality := 0.0, 0.0
+	for i := range in.Tables.Fields {
+		f := &in.Tables.Fields[i]
+		got += f.Weight * float64(f.VisitsPlanned+f.VisitsDone) / math.Max(1, float64(f.VisitsWanted))
+		quality += f.Weight * f.Coverage
+	}
+	if got > 0 {
+		m.Limits = append(m.Limits, fmt.Sprintf("The visits that are got have a mean quality of %s: the rest goes to airmass, moonlight and twilight.", strconv.FormatFloat(quality/got, 'f', 2, 64)))
+	}
+}
+
+func (m *page) telescopes(in *Input) {
+	for _, t := range in.Tables.Summary.Telescopes {
+		sum, open := 0.0, 0.0
+		for i := range in.Tables.Nights {
+			if n := &in.Tables.Nights[i]; n.Telescope == t.Telescope {
+				sum += n.PricePerHour * n.OpenHours
+				open += n.OpenHours
+			}
+		}
+		price := "-"
+		if open > 0 {
+			price = millionths(sum / open)
+		}
+		m.Scopes = append(m.Scopes, []string{t.Site, t.Telescope, whole(t.Visits), hours(t.Hours.Dark), hours(t.Hours.Open), hours(t.Hours.Used), part(t.Hours.Used, t.Hours.Open), price})
+	}
+}
+
+// shortShown is how many unfinished fields the page lists.
+const shortShown = 60
+
+func (m *page) short(in *Input) {
+	missing := unfinished(in.Tables.Fields)
+	for k, f := range missing {
+		if k == shortShown {
+			m.ShortMore = len(missing) - shortShown
+			break
+		}
+		m.Short = append(m.Short, []string{f.Field, f.Program, strconv.FormatFloat(f.Weight, 'g', 4, 64), whole(f.VisitsPlanned + f.VisitsDone), whole(f.VisitsWanted),
+			strconv.FormatFloat(f.Coverage, 'f', 3, 64), hours(f.UsableHours), f.LimitedBy})
+	}
+	breaches, demands := int64(0), 0
+	for i := range in.Tables.Demands {
+		if n := in.Tables.Demands[i].GapMaxBreaches; n > 0 {
+			breaches += n
+			demands++
+		}
+	}
+	switch {
+	case breaches == 0:
+		m.Wishes = "No wish for a longest gap between visits is broken."
+	default:
+		m.Wishes = fmt.Sprintf("The wish for a longest gap between visits is broken %s times, for %s demands of fields; it is a wish, not a rule.", whole(breaches), whole(int64(demands)))
+	}
+}
+
+func (m *page) origin(in *Input) {
+	s := &in.Tables.Summary
+	m.Origin = []fact{
+		{"Made by", "nightwright " + s.Program, ""},
+		{"Command", fmt.Sprintf("nightwright plan SURVEY --effort %s --seed %d", s.Effort, s.Seed), ""},
+		{"Search", s.Status, ""},
+		{"plan.json", in.PlanSum, ""},
+	}
+	for _, f := range s.Files {
+		m.Files = append(m.Files, []string{"survey/" + f.Name, whole(f.Bytes), f.SHA256})
+	}
+	for _, t := range s.Tables {
+		m.Files = append(m.Files, []string{t.Name, whole(t.Bytes), t.SHA256})
+	}
+}
+
+// outside fills in what other jobs found out.
+func (m *page) outside(in *Input) {
+	if f := in.Forecast; f != nil {
+		m.Forecast = append(m.Forecast, fmt.Sprintf("Over %s simulated seasons of weather the plan, with re-planning, reaches a coverage of %s on average; nine seasons of ten lie between %s and %s. On clear nights alone it promises %s.",
+			whole(int64(f.Seasons)), decimals4(f.Mean), decimals4(f.Low), decimals4(f.High), decimals4(f.Promised)))
+		if f.FieldsForecastable > 0 {
+			m.Forecast = append(m.Forecast, fmt.Sprintf("%s of %s fields finish in at least half of the seasons.", whole(int64(f.FieldsLikely)), whole(int64(f.FieldsForecastable))))
+		}
+		for k, c := range f.Finish {
+			if k == 20 {
+				break
+			}
+			m.Chances = append(m.Chances, []string{c.Field, percent(c.Chance, 0)})
+		}
+	}
+	for _, n := range in.Networks {
+		m.NetworkRows = append(m.NetworkRows, []string{n.Name, n.Sites, decimals4(n.Mean), decimals4(n.Low) + " to " + decimals4(n.High), n.Note})
+	}
+}
