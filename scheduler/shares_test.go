@@ -6,6 +6,7 @@ import (
 
 	"nightwright/constraints/survey"
 	"nightwright/scenarios/starter"
+	"nightwright/scheduler/dual"
 )
 
 // shareOf solves a survey quickly and returns a program's share, what one visit
@@ -67,5 +68,34 @@ func TestShareThatCannotBeIsTold(t *testing.T) {
 	got, breach, _, why := shareOf(t, sv, 0)
 	if got != 0 || math.Abs(breach-0.3) > 1e-9 || why == "" {
 		t.Errorf("share %g, breach %g, why %q; want 0, 0.3 and a reason", got, breach, why)
+	}
+}
+
+// TestMissedShareBoundsWhatWasReached: the ceiling of a plan that misses a
+// share keeps the bound as far as the plan does. It lies above the plan and,
+// prices being equal, not above the ceiling with the bound dropped.
+func TestMissedShareBoundsWhatWasReached(t *testing.T) {
+	const p = 1
+	sv := starter.Family("small", 2)
+	sv.Programs[p].ShareMin = 0.97
+	k := build(t, sv, 2)
+	o := solve(t, k, 2, "quick", 1)
+	if o.Shares[p].Breach == 0 {
+		t.Fatalf("program %d has all of its share, %g; the test wants a breach", p, o.Shares[p].Share)
+	}
+	a := dual.NewAscent(k.Problem)
+	a.Run(t.Context(), dual.Level{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.6, Steps: 30, Sample: 1, Eta: 0.5, EtaLast: 0.05}, nil)
+	asked := a.Ceiling(600)
+	a.Relax(p, o.Shares[p].Share)
+	reached := a.Ceiling(600)
+	a.Relax(p, 0)
+	dropped := a.Ceiling(600)
+	c := legal(t, k, "missed share", o.Plan.Exposures)
+	t.Logf("coverage %.4f; ceiling with the share asked %.4f, reached %.4f, none %.4f; told %.4f", c, asked, reached, dropped, o.Ceiling)
+	if !(asked < reached && reached < dropped) {
+		t.Errorf("ceilings %.6f with the share asked, %.6f with what was reached, %.6f without", asked, reached, dropped)
+	}
+	if c > reached || c > o.Ceiling {
+		t.Errorf("coverage %.6f is over the ceiling %.6f or %.6f", c, reached, o.Ceiling)
 	}
 }

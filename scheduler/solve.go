@@ -118,13 +118,13 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 		if told[i].Breach == 0 {
 			continue
 		}
-		// A plan out of its share bounds is compared with plans that need not
-		// keep them either.
+		// A plan out of its share bounds is compared with plans that keep them
+		// as far as it does.
 		if !relaxed {
 			ascent.Restore(kept)
 		}
 		relaxed = true
-		ascent.Relax(int(told[i].Program))
+		ascent.Relax(int(told[i].Program), told[i].Share)
 	}
 	if relaxed {
 		ceiling = ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)

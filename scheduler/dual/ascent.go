@@ -132,8 +132,8 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 		for _, g := range groups {
 			g.move(load)
 		}
-		a.shares.move(a.p, a.programTime(), eta*a.scale)
-		a.shares.rates(a.p, a.oracle.Share)
+		a.shares.move(a.programTime(), eta*a.scale)
+		a.shares.rates(a.oracle.Share)
 		for s, c := range a.prices.capacity {
 			if c <= 0 {
 				continue
@@ -176,7 +176,7 @@ func (a *Ascent) Restore(k Kept) {
 	copy(a.oracle.Mu, k.mu)
 	copy(a.shares.low, k.low)
 	copy(a.shares.high, k.high)
-	a.shares.rates(a.p, a.oracle.Share)
+	a.shares.rates(a.oracle.Share)
 	for t := range a.oracle.shapes {
 		for i := range a.oracle.shapes[t] {
 			a.oracle.shapes[t][i].busy = a.oracle.shapes[t][i].length + a.p.Scopes[t].LeastGap

@@ -19,6 +19,7 @@ import (
 //
 // and the constant sum_p (low[p] + high[p]) t_p.
 type shareState struct {
+	min, max  []float64 // the bounds, of all exposure time
 	low, high []float64 // C per second
 	longest   []float64 // t_p, s
 	stepLow   []float64
@@ -31,13 +32,14 @@ type shareState struct {
 func newShareState(p *model.Problem) *shareState {
 	n := len(p.Survey.Programs)
 	s := &shareState{
-		low: make([]float64, n), high: make([]float64, n), longest: p.LongestVisits(),
+		min: make([]float64, n), max: make([]float64, n), low: make([]float64, n), high: make([]float64, n), longest: p.LongestVisits(),
 		stepLow: make([]float64, n), stepHigh: make([]float64, n),
 		oldLow: make([]float64, n), oldHigh: make([]float64, n),
 	}
 	for i := range n {
 		s.stepLow[i], s.stepHigh[i] = 2, 2
 		pr := &p.Survey.Programs[i]
+		s.min[i], s.max[i] = pr.ShareMin, pr.ShareMax
 		s.any = s.any || pr.ShareMin > 0 || pr.ShareMax < 1
 	}
 	return s
@@ -45,7 +47,7 @@ func newShareState(p *model.Problem) *shareState {
 
 // move changes the multipliers after a step that planned the given exposure
 // time by program, s.
-func (s *shareState) move(p *model.Problem, time []float64, size float64) {
+func (s *shareState) move(time []float64, size float64) {
 	var all float64
 	for _, t := range time {
 		all += t
@@ -54,12 +56,11 @@ func (s *shareState) move(p *model.Problem, time []float64, size float64) {
 		return
 	}
 	for i := range time {
-		pr := &p.Survey.Programs[i]
-		if pr.ShareMin > 0 {
-			push(&s.low[i], &s.stepLow[i], &s.oldLow[i], pr.ShareMin-time[i]/all, size)
+		if s.min[i] > 0 {
+			push(&s.low[i], &s.stepLow[i], &s.oldLow[i], s.min[i]-time[i]/all, size)
 		}
-		if pr.ShareMax < 1 {
-			push(&s.high[i], &s.stepHigh[i], &s.oldHigh[i], time[i]/all-pr.ShareMax, size)
+		if s.max[i] < 1 {
+			push(&s.high[i], &s.stepHigh[i], &s.oldHigh[i], time[i]/all-s.max[i], size)
 		}
 	}
 }
@@ -75,12 +76,11 @@ func push(m, step, old *float64, breach, size float64) {
 }
 
 // rates writes the value a second of exposure has beside its coverage.
-func (s *shareState) rates(p *model.Problem, out []float64) {
+func (s *shareState) rates(out []float64) {
 	for q := range out {
 		out[q] = 0
 		for i := range s.low {
-			pr := &p.Survey.Programs[i]
-			out[q] += s.high[i]*pr.ShareMax - s.low[i]*pr.ShareMin
+			out[q] += s.high[i]*s.max[i] - s.low[i]*s.min[i]
 			if i == q {
 				out[q] += s.low[i] - s.high[i]
 			}
@@ -97,11 +97,13 @@ func (s *shareState) slack() float64 {
 	return sum
 }
 
-// Relax takes the multipliers of a program's share bounds out, for a ceiling
-// of plans that need not keep them.
-func (a *Ascent) Relax(program int) {
-	a.shares.low[program], a.shares.high[program] = 0, 0
-	a.shares.rates(a.p, a.oracle.Share)
+// Relax moves a program's share bounds out as far as a plan's share needs,
+// for a ceiling of the plans that keep them so far. The multipliers stay: any
+// give a bound.
+func (a *Ascent) Relax(program int, share float64) {
+	s := a.shares
+	s.min[program], s.max[program] = math.Min(s.min[program], share), math.Max(s.max[program], share)
+	s.rates(a.oracle.Share)
 }
 
 // ShareRates returns what a second of exposure of each program is worth beside
