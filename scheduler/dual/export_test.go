@@ -31,3 +31,17 @@ func (a *Ascent) WantBound(want int) float64 {
 
 // PricedValue is the rest of the ceiling: what the capacity is worth.
 func (a *Ascent) PricedValue() float64 { return a.capacityValue() - a.keepFreeValue() }
+
+// AddCapacity gives a telescope more seconds in a slot, on paper: the proof's
+// capacity grows, the open time doesn't.
+func (a *Ascent) AddCapacity(scope int, slotStart int64, seconds float64) {
+	s := slotStart*1_000_000/a.prices.slot - a.prices.first
+	a.prices.capacity[scope*a.prices.n+int(s)] += seconds
+}
+
+// SetRatesAt sets every price by the slot's start, Unix s.
+func (a *Ascent) SetRatesAt(rate func(scope int, slotStart int64) float64) {
+	a.SetRates(func(scope, slot int) float64 {
+		return rate(scope, (a.prices.first+int64(slot))*a.prices.slot/1_000_000)
+	})
+}

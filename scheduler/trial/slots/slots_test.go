@@ -82,8 +82,12 @@ func TestExactOptima(t *testing.T) {
 	t.Logf("plan / R: mean %.4f, least %.4f; ceiling / U: mean %.4f, most %.4f; %g surveys", planSum/n, leastPlan, ceilingSum/n, mostCeiling, n)
 }
 
-// gridOf is the grid of starts, s: coarser where sets make many columns.
+// gridOf is the grid of starts, s: coarser where sets make many columns, or
+// shares hard rows.
 func gridOf(p *model.Problem) float64 {
+	if p.Survey.Programs[0].ShareMin > 0 {
+		return 600
+	}
 	for i := range p.Wants {
 		if len(p.Wants[i].Steps) > 1 {
 			return 600
