@@ -120,7 +120,7 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 		if ctx.Err() != nil {
 			break
 		}
-		if full := bound + a.capacityValue() - a.keepFreeValue() + a.shares.slack(); lv.Fine && full < best {
+		if full := bound + a.capacityValue() - a.keepFreeValue() + a.shares.slack(a.oracle.Share); lv.Fine && full < best {
 			best, kept = full, a.Keep()
 		}
 		clear(load)
@@ -149,7 +149,7 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.scale*d)
 		}
 		if progress != nil {
-			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue()+a.shares.slack())
+			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue()+a.shares.slack(a.oracle.Share))
 		}
 	}
 	if lv.Fine && !math.IsInf(best, 1) {

@@ -29,7 +29,7 @@ func (a *Ascent) CeilingWithin(ctx context.Context, width float64) float64 {
 	if ctx.Err() != nil {
 		return 1
 	}
-	sum := best + a.capacityValue() - a.keepFreeValue() + a.shares.slack()
+	sum := a.p.Earned + best + a.capacityValue() - a.keepFreeValue() + a.shares.slack(a.oracle.Share)
 	if sum <= 0 {
 		return 0 // not a rounding's worth above it: nothing can be got
 	}

@@ -66,7 +66,9 @@ func (o *Oracle) field(sc *scratch, f int, chosen func(wi int, picks []pick)) fl
 		b, sc.picks = o.best(sc, wi, sc.picks[:0])
 		sum += b
 		w := &o.p.Wants[wi]
-		if bonus > 0 && len(w.Scopes) == 0 {
+		if w.Visits == 0 {
+			// All are given: nothing to gain, nothing in the bonus' way.
+		} else if bonus > 0 && len(w.Scopes) == 0 {
 			full = math.Inf(-1)
 		} else if bonus > 0 && o.Mu[wi] > 0 {
 			full += b // at a positive multiplier all visits are got already

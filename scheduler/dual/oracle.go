@@ -214,7 +214,7 @@ func (o *Oracle) gatherNight(sc *scratch, wi int, w *model.Want, t int32, n int,
 	if len(o.p.OpenOuter(int(t), n)) == 0 {
 		return
 	}
-	if o.limit(w, t, n) <= floor {
+	if o.limit(w, t, n) <= floor || o.p.Barred(w, t, n) {
 		return
 	}
 	if !o.fine {

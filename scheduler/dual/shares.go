@@ -17,11 +17,13 @@ import (
 //
 //	sum_p low[p] ([q = p] - min_p) + high[p] (max_p - [q = p])
 //
-// and the constant sum_p (low[p] + high[p]) t_p.
+// and the constant sum_p (low[p] + high[p]) t_p. Time that is given counts in T
+// too: it adds each program's rate times its given seconds to the constant.
 type shareState struct {
 	min, max  []float64 // the bounds, of all exposure time
 	low, high []float64 // C per second
 	longest   []float64 // t_p, s
+	given     []float64 // exposure time of what is given, s; nil: none
 	stepLow   []float64
 	stepHigh  []float64
 	oldLow    []float64
@@ -32,7 +34,8 @@ type shareState struct {
 func newShareState(p *model.Problem) *shareState {
 	n := len(p.Survey.Programs)
 	s := &shareState{
-		min: make([]float64, n), max: make([]float64, n), low: make([]float64, n), high: make([]float64, n), longest: p.LongestVisits(),
+		min: make([]float64, n), max: make([]float64, n), low: make([]float64, n), high: make([]float64, n),
+		longest: p.LongestVisits(), given: p.GivenSeconds,
 		stepLow: make([]float64, n), stepHigh: make([]float64, n),
 		oldLow: make([]float64, n), oldHigh: make([]float64, n),
 	}
@@ -49,8 +52,11 @@ func newShareState(p *model.Problem) *shareState {
 // time by program, s.
 func (s *shareState) move(time []float64, size float64) {
 	var all float64
-	for _, t := range time {
-		all += t
+	for i := range time {
+		if s.given != nil {
+			time[i] += s.given[i]
+		}
+		all += time[i]
 	}
 	if !s.any || all == 0 {
 		return
@@ -89,10 +95,13 @@ func (s *shareState) rates(out []float64) {
 }
 
 // slack is the constant of the Lagrangian.
-func (s *shareState) slack() float64 {
+func (s *shareState) slack(rates []float64) float64 {
 	var sum float64
 	for i := range s.low {
 		sum += (s.low[i] + s.high[i]) * s.longest[i]
+		if s.given != nil {
+			sum += rates[i] * s.given[i]
+		}
 	}
 	return sum
 }

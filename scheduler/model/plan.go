@@ -36,6 +36,7 @@ type Exposure struct {
 	State     State
 	Start     int64
 	End       int64
+	Quality   float64 // of one that was done: the ledger's; else 0
 }
 
 // Plan is what the program writes out: exposures sorted by (Start, Telescope).

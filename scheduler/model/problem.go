@@ -33,6 +33,11 @@ type Problem struct {
 	edges     [][]visibility.MoonEdge // [site * Nights + night]
 	bonus     []float64               // [field]
 	MaxValue  float64                 // largest Want.Value, for scales
+
+	// What is given; see Take.
+	Earned       float64    // C of the given visits, and of fields finished by them
+	GivenSeconds []float64  // [program] their scaled exposure time in the period; nil: none
+	Busy         []Exposure // of them, where they share a night with what is planned
 }
 
 // Want is one demand of one field.
@@ -48,6 +53,7 @@ type Want struct {
 	PerNight      int32   // 0: no limit
 	Scopes        []int32 // telescopes that may serve it, ascending
 	Program       int32
+	bounds        []bound // given visits that bind the cadence, by start
 }
 
 // Step is one exposure of a visit.

@@ -107,6 +107,7 @@ func (s *state) sync(n *night) {
 func (s *state) forget(id int32) {
 	v := &s.visits[id]
 	v.alive = false
+	s.charged += v.charge
 	list := s.of[v.want]
 	for i, x := range list {
 		if x == id {
@@ -126,6 +127,7 @@ func (s *state) forget(id int32) {
 func (s *state) remember(id int32) {
 	v := &s.visits[id]
 	v.alive = true
+	s.charged -= v.charge
 	s.of[v.want] = append(s.of[v.want], id)
 	f := s.p.Wants[v.want].Field
 	s.got[f]++

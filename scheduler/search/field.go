@@ -19,13 +19,17 @@ type placer struct {
 	combos []combo
 	picked []int
 	banned []spot // spots of the want being filled that turned out not to work
+	// Spots are looked for in the nights [from, to), and with only in those
+	// telescope-nights alone.
+	from, to int
+	only     []bool // [scope * Nights + night]; nil: all
 }
 
 // startBin is the width of the bins in which the finder keeps one spot, s.
 const startBin = 200
 
 func newPlacer(s *state, mu []float64) *placer {
-	pl := &placer{s: s, mu: slices.Clone(mu)}
+	pl := &placer{s: s, mu: slices.Clone(mu), to: s.p.Nights}
 	pl.find = finder{s: s, bin: startBin * model.Micro}
 	for range s.p.Workers {
 		pl.scouts = append(pl.scouts, scout{find: pl.find})
@@ -92,7 +96,7 @@ func (pl *placer) replace(field int, extra float64) {
 // the time used on the nights it touches.
 func (pl *placer) objective() float64 {
 	s := pl.s
-	v := float64(s.score) / scoreUnit
+	v := float64(s.score-s.charged) / scoreUnit
 	if s.theta > 0 {
 		v -= s.theta * s.priced
 	}
@@ -153,13 +157,16 @@ func (pl *placer) fill(wi int, extra float64) {
 // are looked through by several scouts, each a stretch of them; what they
 // bring is joined in the order of the nights.
 func (pl *placer) gather(wi int, w *model.Want, least, extra float64) {
-	nights := pl.s.p.Nights
+	nights := pl.to - pl.from
 	cells := len(w.Scopes) * nights
 	model.Parallel(len(pl.scouts), len(pl.scouts), func(k int) {
 		sc := &pl.scouts[k]
 		sc.spots, sc.combos = sc.spots[:0], sc.combos[:0]
 		for i := k * cells / len(pl.scouts); i < (k+1)*cells/len(pl.scouts); i++ {
-			sc.look(w, w.Scopes[i/nights], i%nights, least)
+			t, n := w.Scopes[i/nights], pl.from+i%nights
+			if pl.only == nil || pl.only[int(t)*pl.s.p.Nights+n] {
+				sc.look(w, t, n, least)
+			}
 		}
 	})
 	pl.all, pl.combos = pl.all[:0], pl.combos[:0]
@@ -174,7 +181,7 @@ func (pl *placer) gather(wi int, w *model.Want, least, extra float64) {
 	if len(pl.banned) > 0 {
 		pl.all = slices.DeleteFunc(pl.all, pl.isBanned)
 	}
-	if len(pl.s.of[wi]) > 0 {
+	if len(pl.s.of[wi]) > 0 || w.Given() {
 		pl.all = slices.DeleteFunc(pl.all, func(sp spot) bool { return pl.s.tooNear(w, wi, sp) })
 	}
 	if extra != 0 {
@@ -198,7 +205,10 @@ func (pl *placer) isBanned(sp spot) bool {
 
 // tooNear reports whether a spot breaks the cadence with a visit that stays.
 func (s *state) tooNear(w *model.Want, wi int, sp spot) bool {
-	same := int32(0)
+	if w.Near(sp.start, sp.night) {
+		return true
+	}
+	same := w.GivenIn(sp.night)
 	for _, id := range s.of[wi] {
 		v := &s.visits[id]
 		if sp.start-v.late < w.Spacing && v.early-sp.start < w.Spacing {
@@ -228,7 +238,9 @@ func (pl *placer) putBack(wi int, w *model.Want, k int) bool {
 	if k+1 < len(pl.picked) {
 		hi = min(hi, (pl.all[pl.picked[k+1]].start-sp.start-w.Spacing)/2)
 	}
-	same := int32(0)
+	down, up := w.Slack(sp.start)
+	lo, hi = max(lo, down), min(hi, up)
+	same := w.GivenIn(sp.night)
 	for _, id := range s.of[wi] {
 		v := &s.visits[id]
 		if sp.start > v.start {

@@ -90,6 +90,9 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	class := s.p.Scopes[scope].Class
 	f.length = s.p.Length(st, scope)
 	f.extra = s.rates[w.Program] * model.Sec(f.length)
+	if s.p.Barred(w, scope, nightIndex) {
+		return from
+	}
 	limit := f.value*s.p.Shelf.Top(class, nightIndex, st.Row) + f.extra
 	if s.theta > 0 {
 		limit -= s.theta * s.least[int(scope)*s.p.Nights+nightIndex] * model.Sec(f.length)
@@ -232,7 +235,7 @@ func (f *finder) position(p, next int, lo, hi int64) {
 			continue // another exposure of the same set
 		}
 		eject[k-p] = e.visit
-		lost += float64(v.credit) / scoreUnit
+		lost += float64(v.credit+v.charge) / scoreUnit
 		w := &f.s.p.Wants[e.want]
 		if r := f.s.rates[w.Program]; r != 0 {
 			lost += r * f.s.visitSeconds(v)

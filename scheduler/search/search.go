@@ -24,11 +24,12 @@ type Search struct {
 // relaxation: what each want's last visit is worth.
 func New(p *model.Problem, price pricer, mu []float64, seed uint64) *Search {
 	s := newState(p, price)
+	s.occupy(p.Busy)
 	return &Search{p: p, s: s, pl: newPlacer(s, mu), rg: rand.New(rand.NewPCG(seed, 1))}
 }
 
 // Coverage returns the plan's coverage by the search's own count.
-func (x *Search) Coverage() float64 { return float64(x.s.score) / scoreUnit }
+func (x *Search) Coverage() float64 { return x.p.Earned + float64(x.s.score)/scoreUnit }
 
 // Stats returns the counters.
 func (x *Search) Stats() *Stats { return &x.s.stats }
@@ -36,6 +37,11 @@ func (x *Search) Stats() *Stats { return &x.s.stats }
 // Construct places every field once, most valuable time first, with the price
 // of time weighed by theta.
 func (x *Search) Construct(ctx context.Context, theta float64, report func(done, of int)) {
+	x.run(ctx, x.byWorth(), theta, report)
+}
+
+// byWorth lists the fields by the value of a second of their visits, most first.
+func (x *Search) byWorth() []int {
 	n := len(x.p.FieldWant) - 1
 	order := make([]int, n)
 	worth := make([]float64, n)
@@ -58,7 +64,7 @@ func (x *Search) Construct(ctx context.Context, theta float64, report func(done,
 		}
 	}
 	slices.SortStableFunc(order, func(a, b int) int { return cmp.Compare(worth[b], worth[a]) })
-	x.run(ctx, order, theta, report)
+	return order
 }
 
 // Sweep places every field again in random order.
@@ -98,6 +104,9 @@ func (x *Search) Plan() *model.Plan {
 	for i := range x.s.nights {
 		for k := range x.s.nights[i].list {
 			e := &x.s.nights[i].list[k]
+			if x.s.visits[e.visit].fixed {
+				continue // given, not planned
+			}
 			w := &x.p.Wants[e.want]
 			ex := model.Exposure{
 				Field: w.Field, Demand: w.Demand, Step: int32(e.step), Telescope: int32(i / x.p.Nights),

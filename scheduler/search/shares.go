@@ -36,16 +36,7 @@ func (x *Search) KeepShares(ctx context.Context, report func(done, of int)) {
 		}
 		x.Sweep(ctx, 0, report)
 	}
-	// Trimming one program shrinks the whole and can push another over: until
-	// none is. Each round drops a visit, so this ends.
-	for trimmed := true; trimmed; {
-		trimmed = false
-		for p := range x.s.rates {
-			if x.trim(int32(p), longest[p]) {
-				trimmed = true
-			}
-		}
-	}
+	x.Trim()
 }
 
 // density is the plan's coverage per second of exposure.

@@ -78,6 +78,8 @@ type visit struct {
 	early  int64 // the first exposure's shift window
 	late   int64
 	credit int64 // of all its exposures
+	charge int64 // what it costs to take it out: a planner's calendar shifts
+	ref    int32 // which visit of an earlier plan it is, from 1; 0: a new one
 }
 
 // state is the search's own picture of a plan. Only one goroutine changes it.
@@ -94,6 +96,7 @@ type state struct {
 	bonus    []int64   // [field] bonus when every visit is got, 1e-12 of C
 	wanted   []int32   // [field]
 	stats    Stats
+	charged  int64 // charges of the visits of an earlier plan that are out
 	undo     journal
 	spare    []entry   // the marked night's list
 	timeThen []int64   // time when it was marked
@@ -116,11 +119,13 @@ func newState(p *model.Problem, price pricer) *state {
 	s.nights = make([]night, len(p.Scopes)*p.Nights)
 	s.of = make([][]int32, len(p.Wants))
 	s.rates, s.time = make([]float64, len(p.Survey.Programs)), make([]int64, len(p.Survey.Programs))
+	for i, sec := range p.GivenSeconds {
+		s.time[i] = model.MicroOf(sec)
+	}
 	n := len(p.Survey.Fields)
 	s.got, s.wanted, s.bonus = make([]int32, n), make([]int32, n), make([]int64, n)
 	for f := range n {
-		fd := &p.Survey.Fields[f]
-		s.wanted[f] = int32(p.Survey.Wanted(fd))
+		s.wanted[f] = p.Remaining(f)
 		s.bonus[f] = int64(math.Round(scoreUnit * p.Bonus(f)))
 	}
 	return s

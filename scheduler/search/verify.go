@@ -1,6 +1,10 @@
 package search
 
-import "fmt"
+import (
+	"fmt"
+
+	"nightwright/scheduler/model"
+)
 
 // verify recounts the state from its entries and panics when the running
 // score, the visits' records or the order of a night disagree.
@@ -42,9 +46,15 @@ func (s *state) verify() {
 		}
 	}
 	time := make([]int64, len(s.time))
+	for i, sec := range s.p.GivenSeconds {
+		time[i] = model.MicroOf(sec)
+	}
 	for i := range s.nights {
 		for k := range s.nights[i].list {
 			e := &s.nights[i].list[k]
+			if s.visits[e.visit].fixed {
+				continue // among the given seconds
+			}
 			time[s.p.Wants[e.want].Program] += e.length
 		}
 	}
