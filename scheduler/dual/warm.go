@@ -29,7 +29,7 @@ func (pr *Prices) set(list []model.Price) {
 	pr.integrate()
 }
 
-// SetMu gives the wants' count multipliers a start: what each want's last visit
+// StartMu gives the wants' count multipliers a start: what each want's last visit
 // is worth over the price of its time, C. It speeds the ceiling up and leaves it
 // one whatever the values.
-func (a *Ascent) SetMu(mu []float64) { copy(a.oracle.Mu, mu) }
+func (a *Ascent) StartMu(mu []float64) { copy(a.oracle.Mu, mu) }
