@@ -17,6 +17,11 @@ const shortSize = 24
 // against.
 const lookAhead = 8
 
+// trust is how much of what a visit would be worth later is believed: later
+// hours are shared with others and may be closed. Measured on the medium family,
+// where 1 gets 0.661, 0.9 0.698 and 0.8 0.694.
+const trust = 0.9
+
 // slotTime is how long a shortlist holds, us.
 const slotTime = model.ShelfStep * model.Micro
 
@@ -382,7 +387,7 @@ func (pl *Player) candidates(s *scope, block int32) {
 				x := c.value*mean*float64(pl.st.qualities[o.at+b-int32(o.from)]) - f.price[k]*busy - c.reserve
 				later = math.Max(later, x*f.chance[k])
 			}
-			c.reserve += later
+			c.reserve = trust * (c.reserve + later)
 		}
 		s.cands = append(s.cands, c)
 	}

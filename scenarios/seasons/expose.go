@@ -169,6 +169,14 @@ func (pl *Player) follow(s *scope, start int64) {
 	s.pending = s.pending[:copy(s.pending, s.pending[1:])]
 	w := &p.Wants[c.want]
 	length := p.Length(&w.Steps[c.step], s.id)
+	if c.set != nil && !c.set.planned {
+		if late := pl.overBudget(s, start, length); start+late <= c.latest {
+			start += late
+		} else {
+			pl.fail(s, c.set)
+			return
+		}
+	}
 	can := pl.sky.Open(int(s.site), hourOf(start)) && pl.legal(s, w, start, length)
 	if c.step == 0 { // of a list: what was made up for may be too near
 		can = can && start-pl.last[c.want] >= w.Spacing && pl.f.left[c.want] > 0
@@ -180,7 +188,7 @@ func (pl *Player) follow(s *scope, start int64) {
 	case c.set == nil:
 		pl.lost[c.want]++
 		return
-	case !can || !c.set.planned && pl.overBudget(s, start, length) > 0:
+	case !can:
 		pl.fail(s, c.set)
 		return
 	case !c.set.claimed:

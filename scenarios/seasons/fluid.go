@@ -258,7 +258,7 @@ const (
 	firstEta     = 0.3
 	firstLast    = 0.02
 	nightlySteps = 4
-	nightlyEta   = 0.06
+	nightlyEta   = 0.03
 )
 
 // solve prices a whole season from no prices at all, with the climate alone.

@@ -10,11 +10,11 @@ import (
 // Cast says who plays: a policy over a set of sites, against which prices.
 type Cast struct {
 	Policy Policy
-	Sites  []int             // nil: all
-	List   []model.Exposure  // AsPlanned: the plan
-	Prices []model.Price     // FixedPrices: the plan's; nil: prices of the expected weather
-	Record bool              // keep the exposures taken
-	Bins   bool              // sort the credit by declination, month and Moon
+	Sites  []int              // nil: all
+	List   []model.Exposure   // AsPlanned: the plan
+	Prices []model.Price      // FixedPrices: the plan's; nil: prices of the expected weather
+	Record bool               // keep the exposures taken
+	Bins   bool               // sort the credit by declination, month and Moon
 	Down   func(k int) Outage // shuts a site in season k; nil: never
 }
 
