@@ -45,3 +45,12 @@ func (a *Ascent) SetRatesAt(rate func(scope int, slotStart int64) float64) {
 		return rate(scope, (a.prices.first+int64(slot))*a.prices.slot/1_000_000)
 	})
 }
+
+// SetShareRates sets the multipliers of the share bounds, C per second, by
+// program: of the minimum and of the maximum.
+func (a *Ascent) SetShareRates(rate func(program int) (low, high float64)) {
+	for i := range a.shares.low {
+		a.shares.low[i], a.shares.high[i] = rate(i)
+	}
+	a.shares.rates(a.oracle.Share)
+}

@@ -57,12 +57,12 @@ func optimum(t *testing.T, pr *slots.Program, what string, seed uint64) *slots.S
 // NIGHTWRIGHT_LONG=1; else the first of them.
 func TestExactOptima(t *testing.T) {
 	needSolvers(t)
-	last := uint64(24)
+	last := uint64(8)
 	switch {
 	case os.Getenv("NIGHTWRIGHT_LONG") != "":
 		last = 60
 	case testing.Short():
-		last = 4
+		last = 3
 	}
 	var n, planSum, ceilingSum float64
 	leastPlan, mostCeiling := math.Inf(1), 0.0
