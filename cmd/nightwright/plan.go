@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"slices"
 	"strings"
 	"time"
@@ -53,7 +54,9 @@ audit, and writes a plan folder: Parquet tables, plan.json, and a copy of the
 survey's files. A plan that fails its audit isn't written.
 
 The same survey and seed give the same plan, whatever the number of workers.
-Interrupted, it leaves the plan that stood there.`,
+Interrupted (Ctrl-C), it has the best plan so far audited and writes it, marked
+in plan.json; where a plan stands already it goes beside it, into a folder with
+-interrupted at the end of its name. A second Ctrl-C ends it at once.`,
 		Example: `  nightwright plan mysurvey
   nightwright plan mysurvey --effort thorough --out tonight
   nightwright plan mysurvey --json > summary.json`,
@@ -70,6 +73,7 @@ Interrupted, it leaves the plan that stood there.`,
 			a.note("%s", m)
 		}
 		began := time.Now()
+		ask.Keep = true
 		r, err := work.Plan(cmd.Context(), s, ask, a.options())
 		if err != nil {
 			return err
@@ -79,16 +83,24 @@ Interrupted, it leaves the plan that stood there.`,
 		if r.Unrecorded != nil {
 			a.note("warning: the ledger doesn't have this plan: %v", r.Unrecorded)
 		}
+		var kept error
+		if r.Interrupted {
+			kept = errKept
+			a.say("nightwright: interrupted; the best plan so far was audited and is in %s", r.Folder)
+			if r.Beside {
+				a.say("nightwright: the plan that stood there before still stands")
+			}
+		}
 		switch {
 		case a.asJSON:
-			return a.json(planJSON(r))
+			return cmp.Or(a.json(planJSON(r)), kept)
 		case asCSV:
-			return tables.Visits.WriteCSV(a.stdout, r.Tables.Visits)
+			return cmp.Or(tables.Visits.WriteCSV(a.stdout, r.Tables.Visits), kept)
 		}
 		p := a.printer()
 		p.plan(s, r)
 		p.planNext(s, r)
-		return p.flush()
+		return cmp.Or(p.flush(), kept)
 	})
 	f.add(c.Flags(), "normal")
 	c.Flags().StringVar(&out, "out", "", "write the plan to `FOLDER` (default: plan in the survey folder); a plan there is replaced")

@@ -25,6 +25,9 @@ const (
 // errNo ends a command whose answer is no and was told already.
 var errNo = errors.New("the answer is no")
 
+// errKept ends an interrupted command that kept what it had and told so.
+var errKept = errors.New("interrupted, and kept")
+
 // Run runs the program with the given arguments (without the program's name)
 // and returns its exit code. Results go to stdout, progress and messages to
 // stderr. An interrupt (Ctrl-C) or a termination signal ends the work cleanly; a
@@ -56,6 +59,8 @@ func (a *app) exit(ctx context.Context, err error) int {
 		return exitDone
 	case errors.Is(err, errNo):
 		return exitNo
+	case errors.Is(err, errKept):
+		return exitInterrupted
 	case ctx.Err() != nil || errors.Is(err, context.Canceled):
 		a.say("nightwright: interrupted; nothing was written, what stood before still stands")
 		return exitInterrupted

@@ -21,6 +21,9 @@ type PlanAsk struct {
 	Effort    string        // quick, normal or thorough
 	Seed      *uint64       // nil: the survey's
 	TimeLimit time.Duration // 0: none; a plan that was cut short says so and can't be repeated
+	// Keep writes the best plan so far when the context ends during the search:
+	// where the plan was to go, or, when a plan stands there, beside it.
+	Keep bool
 }
 
 // PlanResult is a plan that passed its audit and was written.
@@ -28,8 +31,12 @@ type PlanResult struct {
 	Folder string
 	Tables *tables.PlanTables
 	Audit  *audit.Report
-	// Unrecorded says why the ledger doesn't have the plan; nil: it has.
+	// Unrecorded says why the ledger doesn't have the plan; nil: it has, or the
+	// plan was put beside another.
 	Unrecorded error
+	// Interrupted says that the context ended; Beside that the plan therefore
+	// went beside the one that stands.
+	Interrupted, Beside bool
 }
 
 // Efforts lists the efforts, least first.
@@ -54,7 +61,8 @@ func (ask *PlanAsk) folder(s *Survey) string {
 }
 
 // Plan optimises a survey, audits the plan afresh and writes its folder. A
-// context that ends, a failed audit or a full disk leaves what stood there.
+// failed audit or a full disk leaves what stood there, and so does a context
+// that ends, unless the best plan so far is to be kept.
 func Plan(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*PlanResult, error) {
 	dir := ask.folder(s)
 	if err := plannable(dir); err != nil {
@@ -70,6 +78,10 @@ func Plan(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*PlanResult, 
 	outcome, err := solve(ctx, s, ask, o)
 	if err != nil {
 		return nil, err
+	}
+	interrupt := ctx
+	if ask.Keep {
+		ctx = context.WithoutCancel(ctx) // what is there is audited and written
 	}
 	o.tell("recount", 0, 1)
 	pt, err := tables.Build(ctx, s.Survey, s.Exact, s.Calendar, s.Windows, outcome, o.Workers)
@@ -91,12 +103,26 @@ func Plan(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*PlanResult, 
 	if err := ctx.Err(); err != nil { // the last moment to turn back
 		return nil, err
 	}
-	if err := tables.WriteFolder(dir, pt, files); err != nil {
+	r := &PlanResult{Folder: dir, Tables: pt, Audit: report, Interrupted: interrupt.Err() != nil}
+	if _, err := os.Stat(filepath.Join(dir, "plan.json")); err == nil && r.Interrupted {
+		r.Folder, r.Beside = dir+besides, true
+		if err := plannable(r.Folder); err != nil {
+			return nil, err
+		}
+	}
+	if err := tables.WriteFolder(r.Folder, pt, files); err != nil {
 		return nil, err
 	}
-	// The plan stands; a ledger that can't be written doesn't undo it.
-	return &PlanResult{dir, pt, report, s.enterPlan(ctx, dir, pt, knew, o)}, nil
+	if !r.Beside {
+		// The plan stands; a ledger that can't be written doesn't undo it.
+		r.Unrecorded = s.enterPlan(ctx, dir, pt, knew, o)
+	}
+	return r, nil
 }
+
+// besides ends the name of the folder of an interrupted plan that would
+// replace a whole one.
+const besides = "-interrupted"
 
 // solve runs the optimiser. Only the caller's context, not the time limit,
 // makes it fail.
@@ -120,10 +146,16 @@ func solve(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*model.Outco
 	out, err := scheduler.Solve(limited, scheduler.Input{
 		Survey: s.Survey, Sky: s.Sky, Calendar: s.Calendar, Windows: s.Windows, Workers: o.Workers,
 	}, scheduler.Params{Effort: ask.Effort, Seed: seed, Progress: o.Progress, Prices: prices})
-	if err := ctx.Err(); err != nil {
+	if stop := ctx.Err(); stop != nil && (!ask.Keep || out == nil || len(out.Plan.Exposures) == 0) {
+		return nil, stop
+	}
+	if err != nil {
 		return nil, err
 	}
-	return out, err
+	if out.Status == model.TimeLimit && len(out.Plan.Exposures) == 0 {
+		return nil, fmt.Errorf("the time limit of %v ended the search before it had placed a visit; nothing was written; give it more, or none", ask.TimeLimit)
+	}
+	return out, nil
 }
 
 // plannable errs when a folder can't take a plan, before hours are spent.

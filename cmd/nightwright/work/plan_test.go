@@ -5,6 +5,7 @@ import (
 	"errors"
 	"os"
 	"path/filepath"
+	"strings"
 	"testing"
 
 	"nightwright/scheduler/model"
@@ -51,6 +52,59 @@ func TestPlanEndedAtAnyPhase(t *testing.T) {
 		if left, _ := filepath.Glob(filepath.Join(dir, "cut", "*")); len(left) > 0 {
 			t.Errorf("ended at %q it left %q", stop, left)
 		}
+	}
+}
+
+// TestPlanKeptAtAnyPhase ends the context at the start of each phase of the
+// search in turn, where the best plan so far is to be kept: then there is either
+// nothing, or a whole plan that passed its audit and says how it came to be. A
+// plan that stood there is never replaced.
+func TestPlanKeptAtAnyPhase(t *testing.T) {
+	dir := t.TempDir()
+	kept := 0
+	for _, stop := range []string{"windows", "prices 1 of 3", "ceiling", "construction", "sweep 1 of 2", "iterations", "recount"} {
+		out := filepath.Join(dir, stop)
+		for _, stands := range []bool{false, true} {
+			ctx, cancel := context.WithCancel(t.Context())
+			r, err := Plan(ctx, small(t), PlanAsk{Out: out, Effort: "quick", Keep: true}, Options{Workers: 1, Progress: func(p model.Progress) {
+				if p.Phase == stop {
+					cancel()
+				}
+			}})
+			cancel()
+			if err != nil {
+				if left, _ := filepath.Glob(out + "*"); !errors.Is(err, context.Canceled) || len(left) > 0 {
+					t.Errorf("ended at %q: %v, and left %q", stop, err, left)
+				}
+				break
+			}
+			kept++
+			if want := map[bool]string{false: out, true: out + "-interrupted"}[stands]; r.Folder != want || r.Beside != stands || !r.Interrupted {
+				t.Errorf("ended at %q, a plan stands: %v: folder %q, beside %v, interrupted %v; want %q", stop, stands, r.Folder, r.Beside, r.Interrupted, want)
+			}
+			pt, err := tables.ReadFolder(r.Folder)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if s := pt.Summary; s.Status != "interrupted" && stop != "recount" || s.Coverage <= 0 || s.Coverage > s.Ceiling {
+				t.Errorf("ended at %q: status %q, coverage %g, ceiling %g", stop, s.Status, s.Coverage, s.Ceiling)
+			}
+		}
+	}
+	if kept < 6 {
+		t.Errorf("only %d plans were kept", kept)
+	}
+}
+
+// TestTimeLimitWithoutAPlanIsTold: no empty plan is written for it.
+func TestTimeLimitWithoutAPlanIsTold(t *testing.T) {
+	out := filepath.Join(t.TempDir(), "plan")
+	_, err := Plan(t.Context(), small(t), PlanAsk{Out: out, Effort: "thorough", TimeLimit: 1}, Options{Workers: 1})
+	if err == nil || !strings.Contains(err.Error(), "time limit of 1ns") {
+		t.Errorf("error %v; want one that names the time limit", err)
+	}
+	if _, err := os.Stat(out); !errors.Is(err, os.ErrNotExist) {
+		t.Error("an empty plan was written")
 	}
 }
 
