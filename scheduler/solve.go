@@ -47,7 +47,7 @@ func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error)
 	if !ok {
 		return nil, fmt.Errorf("scheduler: effort %q is not known; want quick, normal or thorough", params.Effort)
 	}
-	p, err := model.NewProblem(in.Survey, in.Sky, in.Calendar, in.Windows, in.Workers)
+	p, err := problem(ctx, in)
 	if err != nil {
 		return nil, err
 	}
@@ -61,6 +61,19 @@ func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error)
 	out := c.solve(params.Seed)
 	out.Effort, out.Seed = params.Effort, params.Seed
 	return out, nil
+}
+
+// problem gathers what is worked on. A cancelled context gives it up; one that
+// is only late doesn't, for its plan may still be empty and legal.
+func problem(ctx context.Context, in Input) (*model.Problem, error) {
+	patient, stop := context.WithCancel(context.WithoutCancel(ctx))
+	defer stop()
+	defer context.AfterFunc(ctx, func() {
+		if errors.Is(ctx.Err(), context.Canceled) {
+			stop()
+		}
+	})()
+	return model.NewProblemWithin(patient, in.Survey, in.Sky, in.Calendar, in.Windows, in.Workers)
 }
 
 // conductor runs the phases of one solve.

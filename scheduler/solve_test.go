@@ -3,6 +3,7 @@ package scheduler_test
 import (
 	"context"
 	"encoding/json"
+	"errors"
 	"fmt"
 	"os"
 	"slices"
@@ -194,7 +195,12 @@ func TestInterruptedPlanIsLegal(t *testing.T) {
 	defer cancel()
 	o, err := scheduler.Solve(ctx, input(k, 2), scheduler.Params{Effort: "quick"})
 	if err != nil || o.Status != model.TimeLimit {
-		t.Errorf("a deadline that has passed: status %v, error %v", o.Status, err)
+		t.Fatalf("a deadline that has passed: outcome %v, error %v", o, err)
+	}
+	ended, end := context.WithCancel(t.Context())
+	end()
+	if o, err := scheduler.Solve(ended, input(k, 2), scheduler.Params{Effort: "quick"}); !errors.Is(err, context.Canceled) {
+		t.Errorf("cancelled before it began: outcome %v, error %v; want context.Canceled", o, err)
 	}
 }
 

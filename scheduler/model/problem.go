@@ -1,6 +1,7 @@
 package model
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"math"
@@ -95,13 +96,19 @@ func MicroOf(s float64) int64 { return int64(math.Round(s * 1e6)) }
 // NewProblem gathers the survey, its sky, calendar and windows. It errs when
 // the parts don't belong together.
 func NewProblem(sv *survey.Survey, sky *visibility.Sky, cal *constraints.Calendar, win *constraints.Windows, workers int) (*Problem, error) {
+	return NewProblemWithin(context.Background(), sv, sky, cal, win, workers)
+}
+
+// NewProblemWithin is NewProblem, given up with the context's error when it
+// ends: a season's tables of quality take seconds.
+func NewProblemWithin(ctx context.Context, sv *survey.Survey, sky *visibility.Sky, cal *constraints.Calendar, win *constraints.Windows, workers int) (*Problem, error) {
 	if sky.Fields() != len(sv.Fields) || sky.Sites() != len(sv.Sites) {
 		return nil, errors.New("model: the sky tables belong to another survey")
 	}
 	p := &Problem{Survey: sv, Sky: sky, Calendar: cal, Windows: win, Workers: max(1, workers), Nights: sv.Nights()}
 	p.setScopes()
 	p.setOpen()
-	p.setGrids()
+	p.setGrids(ctx)
 	total := sv.TotalWeight()
 	if !(total > 0) {
 		return nil, fmt.Errorf("model: the weights sum to %g; want a sum above 0", total)
@@ -111,8 +118,8 @@ func NewProblem(sv *survey.Survey, sky *visibility.Sky, cal *constraints.Calenda
 		p.addWants(f, total)
 	}
 	p.FieldWant = append(p.FieldWant, int32(len(p.Wants)))
-	p.setShelf()
-	return p, nil
+	p.setShelf(ctx)
+	return p, ctx.Err()
 }
 
 // typicalSlew is the slew that plans make on the whole, rad (measured on the
@@ -186,11 +193,14 @@ func (p *Problem) OpenOuter(scope, night int) []Span { return p.outer[scope*p.Ni
 
 // setGrids builds the frames of every site and night over the open time of
 // its telescopes.
-func (p *Problem) setGrids() {
+func (p *Problem) setGrids(ctx context.Context) {
 	sites := len(p.Survey.Sites)
 	p.grids = make([]*visibility.FrameGrid, sites*p.Nights)
 	p.edges = make([][]visibility.MoonEdge, sites*p.Nights)
 	Parallel(p.Workers, len(p.grids), func(i int) {
+		if ctx.Err() != nil {
+			return
+		}
 		site, n := i/p.Nights, i%p.Nights
 		from, to := math.Inf(1), math.Inf(-1)
 		for _, t := range p.Survey.Sites[site].Telescopes {

@@ -1,6 +1,7 @@
 package model
 
 import (
+	"context"
 	"math"
 
 	"nightwright/visibility"
@@ -77,7 +78,7 @@ func (p *Problem) setRows() (units, filters, fields []int32) {
 }
 
 // setShelf fills the shelf.
-func (p *Problem) setShelf() {
+func (p *Problem) setShelf(ctx context.Context) {
 	units, filters, fields := p.setRows()
 	siteOf := make([]int32, p.Windows.Classes())
 	for i := range siteOf {
@@ -89,7 +90,7 @@ func (p *Problem) setShelf() {
 	s := &Shelf{rows: len(units), nights: p.Nights, pages: make([]page, len(siteOf)*p.Nights)}
 	Parallel(p.Workers, len(s.pages), func(i int) {
 		class, night := i/p.Nights, i%p.Nights
-		if siteOf[class] < 0 {
+		if siteOf[class] < 0 || ctx.Err() != nil {
 			return
 		}
 		fine := p.Grid(int(siteOf[class]), night)
