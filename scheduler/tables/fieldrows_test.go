@@ -121,6 +121,11 @@ func TestLimits(t *testing.T) {
 		{LimitCadence, func(sv *survey.Survey) { demand(sv).GapMin = 5 * 86400 }},
 		{LimitCadence, func(sv *survey.Survey) { demand(sv).PerNight, demand(sv).Visits = 1, 4 }},
 		{LimitCompetition, func(sv *survey.Survey) { demand(sv).PerNight, demand(sv).Visits = 1, 3 }},
+		// A set that is longer than any opening, one that isn't, and one whose
+		// exposures each fit but never in their order.
+		{LimitWindows, func(sv *survey.Survey) { follow(demand(sv), 20*3600, 60) }},
+		{LimitCompetition, func(sv *survey.Survey) { follow(demand(sv), 1800, 60) }},
+		{LimitWindows, func(sv *survey.Survey) { follow(demand(sv), 20, 10) }},
 		// Of two demands the word that comes first tells.
 		{LimitWindows, func(sv *survey.Survey) { demand(sv).GapMin = 5 * 86400; field(sv).Rules[1].SunAltitudeMax = -85 * deg }},
 	}
@@ -135,6 +140,13 @@ func TestLimits(t *testing.T) {
 	if len(Limits()) != 6 || Limits()[0] != LimitNothing {
 		t.Errorf("words: %q", Limits())
 	}
+}
+
+// follow makes a set of a demand: the same exposure again, so long after.
+func follow(d *survey.Demand, after, tolerance float64) {
+	x := d.Exposures[0]
+	x.After, x.Tolerance = after, tolerance
+	d.Exposures = []survey.Exposure{d.Exposures[0], x}
 }
 
 // TestPolarNightsAreOneSequence: where it stays dark at noon, the first

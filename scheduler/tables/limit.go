@@ -4,6 +4,8 @@ import (
 	"cmp"
 	"slices"
 
+	"nightwright/constraints/mount"
+	"nightwright/constraints/survey"
 	"nightwright/visibility"
 )
 
@@ -139,16 +141,11 @@ func (u *usable) demandLimit(field, demand, got int) string {
 			continue
 		}
 		served = true
-		// Starts of a first exposure: its end lies within the opening.
-		long := d.Exposures[0].Duration * b.sv.Telescopes[t].ExposureScale
 		for night := range b.sv.Nights() {
 			k := len(u.openings)
 			u.openings = u.cut(u.openings, b.win.Unit(field, demand), t, night)
-			for i := k; i < len(u.openings); i++ {
-				u.openings[i].To -= long
-			}
-			kept := slices.DeleteFunc(u.openings[k:], func(o opening) bool { return o.To < o.From })
-			u.openings = u.openings[:k+len(kept)]
+			starts := u.starts(u.openings[k:], d, t)
+			u.openings = append(u.openings[:k], starts...)
 		}
 	}
 	switch {
@@ -162,6 +159,40 @@ func (u *usable) demandLimit(field, demand, got int) string {
 		return LimitCadence
 	}
 	return LimitCompetition
+}
+
+// starts turns the openings of a telescope-night into the stretches in which
+// a visit's first exposure may begin: its end lies within its opening, and each
+// later exposure of a set finds a start in some opening, within its tolerance
+// after the one before and clear of it.
+func (u *usable) starts(open []opening, d *survey.Demand, telescope int) []opening {
+	t := &u.b.sv.Telescopes[telescope]
+	var after []opening // starts of the exposure after
+	for k := len(d.Exposures) - 1; k >= 0; k-- {
+		long := d.Exposures[k].Duration * t.ExposureScale
+		var own []opening
+		for _, o := range open {
+			o.To -= long
+			if o.To < o.From {
+				continue
+			}
+			if k == len(d.Exposures)-1 {
+				own = append(own, o)
+				continue
+			}
+			x := &d.Exposures[k+1]
+			least, most := max(x.After-x.Tolerance, long+mount.LeastGap(t)), x.After+x.Tolerance
+			for _, a := range after {
+				s := o
+				s.From, s.To = max(o.From, a.From-most), min(o.To, a.To-least)
+				if least <= most && s.From <= s.To {
+					own = append(own, s)
+				}
+			}
+		}
+		after = own
+	}
+	return after
 }
 
 // good reports whether the first exposure of a demand has its min_quality in
