@@ -1,6 +1,9 @@
 package main
 
 import (
+	"path/filepath"
+	"strings"
+
 	"github.com/spf13/cobra"
 
 	"nightwright/cmd/nightwright/work"
@@ -22,7 +25,7 @@ Sunset is the Sun's centre at -50', moonset the Moon's upper limb at -34'
   nightwright almanac mysurvey --site "Cinder Ridge" --csv
   nightwright almanac mysurvey --out almanac.parquet`,
 	}, func(cmd *cobra.Command, args []string) error {
-		s, err := a.survey(args[0])
+		s, err := a.knownSurvey(args[0])
 		if err != nil {
 			return err
 		}
@@ -41,16 +44,35 @@ Sunset is the Sun's centre at -50', moonset the Moon's upper limb at -34'
 func (a *app) tableFlags(c *cobra.Command, f *tableFlags) {
 	c.Flags().StringVar(&f.out, "out", "", "write to this `FILE`, as Parquet, or as CSV when it ends in .csv")
 	c.Flags().BoolVar(&f.asCSV, "csv", false, "write CSV")
+	c.PreRunE = func(*cobra.Command, []string) error {
+		if f.asCSV && strings.EqualFold(filepath.Ext(f.out), ".parquet") {
+			return work.Inputf("--csv and --out %s ask for two forms; want --out FILE.csv, or no --csv", f.out)
+		}
+		return nil
+	}
 }
 
 // survey reads a survey and tells its warnings.
 func (a *app) survey(path string) (*work.Survey, error) {
-	s, err := work.ReadSurvey(path)
+	s, err := a.knownSurvey(path)
 	if err != nil {
 		return nil, err
 	}
 	for _, w := range s.AllWarnings() {
 		a.note("%s", w)
+	}
+	return s, nil
+}
+
+// knownSurvey reads a survey for a command that is run again and again, and
+// leaves the warnings about its files to those that look at it as a whole.
+func (a *app) knownSurvey(path string) (*work.Survey, error) {
+	s, err := work.ReadSurvey(path)
+	if err != nil {
+		return nil, err
+	}
+	if w := s.LeapWarning(); w != "" {
+		a.note("warning: %s", w)
 	}
 	return s, nil
 }

@@ -25,7 +25,7 @@ told so.`,
 		Example: `  nightwright audit mysurvey mysurvey/plan
   nightwright audit mysurvey mysurvey/plan --csv > breaches.csv`,
 	}, func(cmd *cobra.Command, args []string) error {
-		s, err := a.survey(args[0])
+		s, err := a.knownSurvey(args[0])
 		if err != nil {
 			return err
 		}

@@ -26,11 +26,13 @@ is refused.`,
   nightwright grid mysurvey --from 2027-03-05T00:00:00Z --to 2027-03-06T00:00:00Z --step 1h --csv
   nightwright grid mysurvey --night 2027-03-05 --out grid.parquet`,
 	}, func(cmd *cobra.Command, args []string) error {
-		s, err := a.survey(args[0])
+		s, err := a.knownSurvey(args[0])
 		if err != nil {
 			return err
 		}
-		ask.Step = step
+		if ask.Step = step; step == 0 && cmd.Flags().Changed("step") {
+			return work.Inputf("--step is 0s; want 1s or more, or no --step for the survey's slot")
+		}
 		rows, err := work.Grid(cmd.Context(), s, ask, a.options())
 		if err != nil {
 			return err

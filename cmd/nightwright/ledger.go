@@ -24,7 +24,7 @@ right to write.`,
   nightwright ledger mysurvey --plan march --now 2027-03-15T12:00:00Z
   nightwright ledger mysurvey --json`,
 	}, func(cmd *cobra.Command, args []string) error {
-		s, err := a.survey(args[0])
+		s, err := a.knownSurvey(args[0])
 		if err != nil {
 			return err
 		}

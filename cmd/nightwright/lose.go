@@ -31,7 +31,7 @@ taken out of the ledger; the correction stands beside what it corrects.`,
 		case !ask.Regained && !slices.Contains(ledger.Causes(), ask.Cause):
 			return work.Inputf("--cause is %q; want %s", ask.Cause, strings.Join(ledger.Causes(), ", "))
 		}
-		s, err := a.survey(args[0])
+		s, err := a.knownSurvey(args[0])
 		if err != nil {
 			return err
 		}

@@ -92,6 +92,10 @@ func (p *printer) nights(rows []tables.NightRow) {
 		}
 		p.table(l)
 	}
+	if open[0].PricePerHour == 0 {
+		p.head("No night is scarce: an hour more would add nothing to the ceiling")
+		return
+	}
 	k := min(extremes, (len(open)+1)/2)
 	p.head("Dearest nights: lose these last")
 	list(open[:k])

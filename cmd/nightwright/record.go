@@ -45,7 +45,7 @@ Time that wasn't lost at all is given back with 'nightwright lose --regained'.`,
   nightwright record mysurvey mended.csv --correct
   nightwright record mysurvey old-season.csv --keep-unmatched`,
 	}, func(cmd *cobra.Command, args []string) error {
-		s, err := a.survey(args[0])
+		s, err := a.knownSurvey(args[0])
 		if err != nil {
 			return err
 		}

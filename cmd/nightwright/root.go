@@ -1,6 +1,7 @@
 package main
 
 import (
+	"errors"
 	"fmt"
 	"io"
 	"runtime"
@@ -8,6 +9,7 @@ import (
 	"strings"
 
 	"github.com/spf13/cobra"
+	"github.com/spf13/pflag"
 
 	"nightwright/cmd/nightwright/work"
 )
@@ -53,6 +55,7 @@ func (a *app) root() *cobra.Command {
 	}
 	root.CompletionOptions.HiddenDefaultCmd = true
 	root.SetHelpCommand(&cobra.Command{Use: "no-help", Hidden: true})
+	root.SetFlagErrorFunc(flagFault)
 	root.SetVersionTemplate("nightwright {{.Version}}\n")
 	flags := root.PersistentFlags()
 	flags.BoolVar(&a.asJSON, "json", false, "write the result as JSON on stdout")
@@ -78,6 +81,21 @@ func (a *app) root() *cobra.Command {
 		root.AddCommand(c)
 	}
 	return root
+}
+
+// flagFault says what a flag wants in the words of the other messages.
+func flagFault(_ *cobra.Command, err error) error {
+	var bad *pflag.InvalidValueError
+	if !errors.As(err, &bad) {
+		return err
+	}
+	want, ok := map[string]string{
+		"uint64": "a whole number, 0 or more", "int": "a whole number", "float64": "a number", "bool": "true or false", "duration": "a time such as 90s, 10m or 2h",
+	}[bad.GetFlag().Value.Type()]
+	if !ok {
+		return err
+	}
+	return fmt.Errorf("--%s is %q; want %s", bad.GetFlag().Name, bad.GetValue(), want)
 }
 
 // unknownCommand refuses what is no command, with what is near to it.

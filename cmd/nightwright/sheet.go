@@ -26,7 +26,7 @@ beside them.`,
 		case asCSV && asHTML:
 			return work.Inputf("--csv and --html were both given; want one of them")
 		}
-		s, err := a.survey(args[0])
+		s, err := a.knownSurvey(args[0])
 		if err != nil {
 			return err
 		}

@@ -58,10 +58,17 @@ func (l *loader) checkFields(f *fieldList) {
 		}
 	}
 	var found suspicions
+	stands := map[place]string{}
 	for i := range l.sv.Fields {
 		field := &l.sv.Fields[i]
 		used[field.Program] = true
 		l.checkDates(field, int(f.lines[i]), &found)
+		at := place{field.Program, math.Round(field.RA / arcsecond), math.Round(field.Dec / arcsecond)}
+		if other, twin := stands[at]; !twin {
+			stands[at] = field.Name
+		} else if !strings.Contains(other, "%") {
+			found.add("twins", "the position of %s is that of another field of its program, "+other+": the same sky is asked for twice", "want one of them, with more visits if they are meant", field.Name, int(f.lines[i]))
+		}
 		l.checkField(field, carriers[field.Program], int(f.lines[i]), &found)
 	}
 	for _, s := range found.all {
@@ -77,6 +84,15 @@ func (l *loader) checkFields(f *fieldList) {
 		}
 	}
 }
+
+// place is a position to the arc second, of one program's fields.
+type place struct {
+	program int
+	ra, dec float64 // arc seconds
+}
+
+// arcsecond is one, rad.
+const arcsecond = degree / 3600
 
 // checkDates finds fields whose dates leave nothing of the period.
 func (l *loader) checkDates(f *survey.Field, line int, found *suspicions) {

@@ -113,6 +113,9 @@ func columnNames() []string {
 	return all
 }
 
+// separators are what other programs write between cells in place of commas.
+var separators = []struct{ mark, name string }{{";", "semicolons"}, {"\t", "tabs"}, {"|", "bars"}}
+
 // fieldList is one field list being read.
 type fieldList struct {
 	l      *loader
@@ -182,6 +185,14 @@ func (f *fieldList) read(t *rows) {
 
 // place finds the columns in the header.
 func (f *fieldList) place(t *rows) bool {
+	if len(t.header) == 1 {
+		for _, s := range separators {
+			if strings.Contains(t.header[0], s.mark) {
+				f.fault(t.line, "the header has "+s.name+" between its words", "want commas: save the list as comma-separated values")
+				return false
+			}
+		}
+	}
 	f.at = map[string]int{}
 	in := map[string][]int{} // a header's word -> its places
 	for i, h := range t.header {

@@ -183,7 +183,7 @@ func manyFields(n int) string {
 	var b strings.Builder
 	b.WriteString("field,ra_deg,dec_deg,program\n")
 	for i := range n {
-		fmt.Fprintf(&b, "F%d,%.4f,%.4f,%s\n", i, float64(i%36000)/100, float64(i%5000)/100-10, [2]string{"wide", "movers"}[i%2])
+		fmt.Fprintf(&b, "F%d,%.4f,%.4f,%s\n", i, float64(i%36000)/100, float64(i%5000)/100-10+float64(i/180000)/1000, [2]string{"wide", "movers"}[i%2])
 	}
 	return b.String()
 }

@@ -50,7 +50,7 @@ func openCSV(r io.Reader) (*rows, error) {
 		var bad *csv.ParseError
 		switch {
 		case errors.As(err, &bad):
-			return nil, bad.Line, &rowFault{"the row is no CSV: " + bad.Err.Error(), "want cells with commas between, quoted whole or not at all"}
+			return nil, bad.StartLine, quoteFault(bad)
 		case err != nil:
 			return nil, 0, err
 		}
@@ -61,4 +61,18 @@ func openCSV(r io.Reader) (*rows, error) {
 		return cells, line, nil
 	}
 	return t, nil
+}
+
+// quoteFault says what is wrong with the quotes of a row.
+func quoteFault(bad *csv.ParseError) *rowFault {
+	const want = "want cells with commas between, quoted whole or not at all; a quote inside quotes is written twice"
+	switch {
+	case errors.Is(bad.Err, csv.ErrQuote) && bad.Line > bad.StartLine:
+		return &rowFault{"a quote that opens in this row is never closed", want}
+	case errors.Is(bad.Err, csv.ErrQuote):
+		return &rowFault{"a quote is closed in the middle of a cell, or not at all", want}
+	case errors.Is(bad.Err, csv.ErrBareQuote):
+		return &rowFault{"a quote stands in a cell that doesn't begin with one", want}
+	}
+	return &rowFault{"the row is no CSV: " + bad.Err.Error(), want}
 }

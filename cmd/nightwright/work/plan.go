@@ -166,7 +166,7 @@ func plannable(dir string) error {
 		if info, err := os.Stat(parent); err != nil || !info.IsDir() {
 			return Inputf("the plan can't go to %s: there is no folder %s; make it first", dir, parent)
 		}
-		return nil
+		return writable(dir, parent)
 	}
 	if err != nil {
 		return err
@@ -180,6 +180,23 @@ func plannable(dir string) error {
 	}
 	if _, err := os.Stat(filepath.Join(dir, "plan.json")); err != nil && len(entries) > 0 {
 		return Inputf("the plan can't go to %s: the folder holds something else; want a new name or a plan folder to replace", dir)
+	}
+	return writable(dir, filepath.Dir(filepath.Clean(dir)))
+}
+
+// writable errs when nothing can be made in the folder that a plan folder
+// is made in: plan folders are written beside the place and moved there whole.
+func writable(dir, parent string) error {
+	try, err := os.MkdirTemp(parent, ".nightwright-*")
+	if err == nil {
+		err = os.Remove(try)
+	}
+	if err != nil {
+		reason := err
+		if inner := (*os.PathError)(nil); errors.As(err, &inner) {
+			reason = inner.Err
+		}
+		return Inputf("the plan can't go to %s: nothing can be written in %s (%v); want --out with a folder that can be written to", dir, parent, reason)
 	}
 	return nil
 }

@@ -187,3 +187,18 @@ func TestSurveyChangedWhilePlanning(t *testing.T) {
 		t.Error("a plan was written for a survey that had changed")
 	}
 }
+
+// TestPlaceThatCantBeWrittenIsToldAtOnce: before the work, not after it.
+func TestPlaceThatCantBeWrittenIsToldAtOnce(t *testing.T) {
+	told := false
+	report := Options{Workers: 1, Progress: func(model.Progress) { told = true }}
+	// A folder in which not even root may make another.
+	_, err := Plan(t.Context(), small(t), PlanAsk{Out: "/proc/self/plan", Effort: "quick"}, report)
+	var fault *InputError
+	if !errors.As(err, &fault) || !strings.Contains(err.Error(), "nothing can be written in /proc/self") {
+		t.Errorf("error %v; want one that says that nothing can be written there", err)
+	}
+	if told {
+		t.Error("the work had begun")
+	}
+}
