@@ -20,6 +20,7 @@ type Document struct {
 	About string
 	Infos []Info
 	Table Table
+	After []Info // that follow the table, such as that it was cut short
 }
 
 // WriteVOTable writes a document as VOTable 1.4, cells as TABLEDATA.
@@ -70,7 +71,11 @@ func WriteVOTable(w io.Writer, d Document) error {
 		}
 		b.WriteString("</TR>\n")
 	}
-	b.WriteString("</TABLEDATA></DATA>\n</TABLE>\n</RESOURCE>\n</VOTABLE>\n")
+	b.WriteString("</TABLEDATA></DATA>\n</TABLE>\n")
+	for _, i := range d.After {
+		fmt.Fprintf(b, "<INFO name=%s value=%s/>\n", attribute(i.Name), attribute(i.Value))
+	}
+	b.WriteString("</RESOURCE>\n</VOTABLE>\n")
 	return b.Flush()
 }
 

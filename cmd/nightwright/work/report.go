@@ -55,38 +55,52 @@ func reportFile(dir string) string { return filepath.Clean(dir) + "-report.html"
 
 // report makes the report of a plan of this survey.
 func (s *Survey) report(ctx context.Context, pt *tables.PlanTables, ask ReportAsk, o Options) (*ReportResult, error) {
-	if err := s.OpenCalendar(ctx, o); err != nil {
+	r, text, err := s.reportPage(ctx, pt, ask, o)
+	if err != nil {
 		return nil, err
+	}
+	out := &ReportResult{Page: ask.Out, Bytes: len(text), Pictures: []string{}}
+	if ask.Pictures != "" {
+		if out.Pictures, err = writePictures(ctx, r, ask.Pictures); err != nil {
+			return nil, err
+		}
+	}
+	if err := renameio.WriteFile(ask.Out, text, 0o644); err != nil {
+		return nil, err
+	}
+	o.tell("report", 1, 1)
+	return out, nil
+}
+
+// ReportPage makes the page of a report and writes nothing.
+func ReportPage(ctx context.Context, s *Survey, pt *tables.PlanTables, ask ReportAsk, o Options) ([]byte, error) {
+	_, text, err := s.reportPage(ctx, pt, ask, o)
+	return text, err
+}
+
+func (s *Survey) reportPage(ctx context.Context, pt *tables.PlanTables, ask ReportAsk, o Options) (*report.Report, []byte, error) {
+	if err := s.OpenCalendar(ctx, o); err != nil {
+		return nil, nil, err
 	}
 	o.tell("report", 0, 1)
 	sum, err := planSum(pt)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	r, err := report.Build(ctx, report.Input{
 		Tables: pt, Survey: s.Survey, Exact: s.Exact, Calendar: s.Calendar, Night: ask.Night, PlanSum: sum, Workers: o.Workers,
 	})
 	if err != nil {
 		if ctx.Err() != nil {
-			return nil, ctx.Err()
+			return nil, nil, ctx.Err()
 		}
-		return nil, &InputError{What: err.Error()}
+		return nil, nil, &InputError{What: err.Error()}
 	}
 	var b bytes.Buffer
 	if err := r.WriteHTML(&b); err != nil {
-		return nil, err
+		return nil, nil, err
 	}
-	out := &ReportResult{Page: ask.Out, Bytes: b.Len(), Pictures: []string{}}
-	if ask.Pictures != "" {
-		if out.Pictures, err = writePictures(ctx, r, ask.Pictures); err != nil {
-			return nil, err
-		}
-	}
-	if err := renameio.WriteFile(ask.Out, b.Bytes(), 0o644); err != nil {
-		return nil, err
-	}
-	o.tell("report", 1, 1)
-	return out, nil
+	return r, b.Bytes(), nil
 }
 
 // writePictures writes each picture as SVG and PNG.

@@ -1,0 +1,153 @@
+package page
+
+import (
+	"encoding/json"
+	"math"
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+
+	"nightwright/constraints"
+	"nightwright/visibility"
+)
+
+// TestNightsAddUp holds what the page gets against the plan's tables.
+func TestNightsAddUp(t *testing.T) {
+	d := newDesk(t)
+	v, err := d.s.books.view(t.Context())
+	if err != nil {
+		t.Fatal(err)
+	}
+	var all nightsJSON
+	d.get("/api/nights", &all)
+	visits := 0
+	for _, label := range all.Nights {
+		var n nightJSON
+		d.get("/api/nights/"+label, &n)
+		for _, l := range n.Lanes {
+			visits += len(l.Visits)
+			for _, x := range l.Visits {
+				inside := false
+				for _, o := range l.Open {
+					inside = inside || x.Start >= o[0]-1 && x.End <= o[1]+1
+				}
+				if !inside {
+					t.Errorf("%s %s: an exposure outside open time", label, l.Telescope)
+				}
+			}
+		}
+	}
+	if visits != len(v.plan.Visits) {
+		t.Errorf("the nights have %d exposures; want %d", visits, len(v.plan.Visits))
+	}
+	var fields []fieldJSON
+	d.get("/api/fields", &fields)
+	for i, f := range fields {
+		var s storyJSON
+		d.get("/api/field?name="+f.Field, &s)
+		if s.Field != f.Field || len(s.Visits) == 0 != (f.Planned+f.Done == 0) {
+			t.Errorf("field %d: story of %s with %d exposures, %d planned", i, s.Field, len(s.Visits), f.Planned)
+		}
+	}
+}
+
+// TestPlacesOnTheSky: the page's formula from hour angle and declination gives
+// the altitude of the exact path to well under a pixel of its dome.
+func TestPlacesOnTheSky(t *testing.T) {
+	d := newDesk(t)
+	v, err := d.s.books.view(t.Context())
+	if err != nil {
+		t.Fatal(err)
+	}
+	var n nightJSON
+	d.get("/api/nights/2027-03-09", &n)
+	worst := 0.0
+	for i := range v.Survey.Fields {
+		f := &v.Survey.Fields[i]
+		for s := range v.Sites {
+			place := constraints.Place(&v.Sites[s])
+			for at := n.From; at < n.To; at += 3600 {
+				h := n.HourAng[i] + place.Longitude + n.Rate*(at-n.At)
+				got := math.Asin(math.Sin(place.Latitude)*math.Sin(n.Declin[i]) + math.Cos(place.Latitude)*math.Cos(n.Declin[i])*math.Cos(h))
+				want := v.Exact.Star(place, visibility.Position{RA: f.RA, Dec: f.Dec}, at).Altitude
+				worst = max(worst, math.Abs(got-want))
+			}
+		}
+	}
+	if worst > 0.0003 { // 1 arc minute: a twentieth of a pixel
+		t.Errorf("off by %.5f rad", worst)
+	}
+}
+
+// TestSheetsAreTheCommands: the page's sheet is the one of the command.
+func TestSheets(t *testing.T) {
+	d := newDesk(t)
+	code, head, text := d.ask("GET", "/sheet?telescope=C1&night=2027-03-09&form=txt", "")
+	if code != 200 || !strings.Contains(head.Get("Content-Disposition"), `"C1-2027-03-09.txt"`) || !strings.Contains(text, "Cinder Ridge") {
+		t.Errorf("%d %v %s", code, head, text)
+	}
+	if code, _, text := d.ask("GET", "/sheet?telescope=Q9&night=2027-03-09", ""); code != 422 || !strings.Contains(text, "there is no telescope") {
+		t.Errorf("no such telescope: %d %s", code, text)
+	}
+}
+
+// TestPlanThatChanges: the page sees a plan that another program wrote, and
+// says when the survey doesn't fit it.
+func TestPlanThatChanges(t *testing.T) {
+	d := newDesk(t)
+	first, err := d.s.books.view(t.Context())
+	if err != nil {
+		t.Fatal(err)
+	}
+	again, err := d.s.books.view(t.Context())
+	if err != nil || again != first {
+		t.Errorf("an unchanged plan was read again: %v", err)
+	}
+	file := filepath.Join(d.dir, "survey.yaml")
+	text, err := os.ReadFile(file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := os.WriteFile(file, []byte(strings.Replace(string(text), "seed: 3", "seed: 4", 1)), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	if code, _, text := d.ask("GET", "/api/survey", ""); code != 422 || !strings.Contains(text, "survey.yaml") || !strings.Contains(text, "nightwright plan") {
+		t.Errorf("%d %s; want what differs and what to do", code, text)
+	}
+}
+
+// TestDescription: every address is described, and no other.
+func TestDescription(t *testing.T) {
+	d := newDesk(t)
+	var doc struct {
+		OpenAPI    string                                `json:"openapi"`
+		Paths      map[string]map[string]json.RawMessage `json:"paths"`
+		Components struct {
+			Schemas map[string]json.RawMessage `json:"schemas"`
+		} `json:"components"`
+	}
+	d.get("/openapi.json", &doc)
+	if doc.OpenAPI != "3.1.0" {
+		t.Errorf("version %q", doc.OpenAPI)
+	}
+	n := 0
+	for _, m := range doc.Paths {
+		n += len(m)
+	}
+	if n != len(routes()) {
+		t.Errorf("%d operations are described; there are %d", n, len(routes()))
+	}
+	for _, rt := range routes() {
+		op, ok := doc.Paths[rt.Path][lower(rt.Method)]
+		if !ok {
+			t.Errorf("%s %s isn't described", rt.Method, rt.Path)
+		}
+		if rt.Change != strings.Contains(string(op), `"security"`) || rt.Change == (rt.Method == "GET") {
+			t.Errorf("%s %s: change %v; GET changes nothing, and what changes wants the key", rt.Method, rt.Path, rt.Change)
+		}
+		if rt.Body != "" && doc.Components.Schemas[rt.Body] == nil {
+			t.Errorf("%s %s: there is no schema %s", rt.Method, rt.Path, rt.Body)
+		}
+	}
+}
