@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 
 	"nightwright/constraints/survey"
 	"nightwright/scenarios/weather"
@@ -34,9 +35,9 @@ func (a *Asked) tell(phase string, done, total int) {
 	}
 }
 
-// Hindsight plans a season with its weather known: losses are the closed
-// stretches of each telescope. It returns the plan's coverage and ceiling.
-type Hindsight func(ctx context.Context, losses [][]visibility.Interval) (coverage, ceiling float64, err error)
+// Hindsight plans a season with its weather known, as Stage.Known has it. It
+// returns the plan's coverage and ceiling.
+type Hindsight func(ctx context.Context, sv *survey.Survey, losses [][]visibility.Interval) (coverage, ceiling float64, err error)
 
 // ForecastAsk is what a forecast is asked for.
 type ForecastAsk struct {
@@ -102,7 +103,8 @@ func Forecast(ctx context.Context, st *Stage, ask ForecastAsk) ([]tables.PartRow
 	}
 	for k := from; k < min(to, ask.Hindsight); k++ {
 		ask.tell("hindsight", k-from, min(to, ask.Hindsight)-from)
-		coverage, ceiling, err := ask.Plan(ctx, st.Losses(ask.Seed, k))
+		sv, losses := st.Known(ask.Seed, k)
+		coverage, ceiling, err := ask.Plan(ctx, sv, losses)
 		if err != nil {
 			return nil, fmt.Errorf("season %d with hindsight: %w", k, err)
 		}
@@ -113,27 +115,34 @@ func Forecast(ctx context.Context, st *Stage, ask ForecastAsk) ([]tables.PartRow
 	return pw.rows, nil
 }
 
-// Losses returns the closed stretches of a season for each telescope, as a
-// calendar takes them.
-func (st *Stage) Losses(seed uint64, season int) [][]visibility.Interval {
+// Known returns a season with its weather known: the survey without reserved
+// blocks, and, for each telescope, the lost time of a calendar: the closed
+// hours, and the reserved blocks where the season had them, so that they don't
+// move to where the sky happens to open.
+func (st *Stage) Known(seed uint64, season int) (*survey.Survey, [][]visibility.Interval) {
 	sky := weather.NewSky(st.climates, st.first, st.hours)
 	sky.Draw(seed, uint64(season))
-	out := make([][]visibility.Interval, len(st.Survey.Telescopes))
-	for t := range out {
-		site := st.Survey.Telescopes[t].Site
+	sv := *st.Survey
+	sv.Telescopes = slices.Clone(sv.Telescopes)
+	losses := make([][]visibility.Interval, len(sv.Telescopes))
+	for t := range losses {
 		for h := st.first; h < st.first+int64(st.hours); h++ {
-			if sky.Open(site, h) {
+			if sky.Open(sv.Telescopes[t].Site, h) {
 				continue
 			}
 			from, to := float64(h*blockTime), float64((h+1)*blockTime)
-			if n := len(out[t]); n > 0 && out[t][n-1].To == from {
-				out[t][n-1].To = to
+			if n := len(losses[t]); n > 0 && losses[t][n-1].To == from {
+				losses[t][n-1].To = to
 				continue
 			}
-			out[t] = append(out[t], visibility.Interval{From: from, To: to})
+			losses[t] = append(losses[t], visibility.Interval{From: from, To: to})
 		}
+		for n := range st.p.Nights {
+			losses[t] = append(losses[t], st.p.Calendar.Reserved(t, n)...)
+		}
+		sv.Telescopes[t].Reserved = nil
 	}
-	return out
+	return &sv, losses
 }
 
 // monthEnds lists the last days of the months that a survey's nights lie in,

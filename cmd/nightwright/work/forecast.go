@@ -138,14 +138,14 @@ func planOf(s *Survey, pt *tables.PlanTables) error {
 
 // hindsight plans a season at quick effort with its weather known.
 func (s *Survey) hindsight(seed uint64, o Options) seasons.Hindsight {
-	return func(ctx context.Context, losses [][]visibility.Interval) (float64, float64, error) {
+	return func(ctx context.Context, sv *survey.Survey, losses [][]visibility.Interval) (float64, float64, error) {
 		for t := range losses {
 			if t < len(s.Losses) {
 				losses[t] = append(losses[t], s.Losses[t]...)
 			}
 		}
-		cal := constraints.NewCalendar(s.Survey, s.Exact, losses)
-		out, err := scheduler.Solve(ctx, scheduler.Input{Survey: s.Survey, Sky: s.Sky, Calendar: cal, Windows: s.Windows, Workers: o.Workers},
+		cal := constraints.NewCalendar(sv, s.Exact, losses)
+		out, err := scheduler.Solve(ctx, scheduler.Input{Survey: sv, Sky: s.Sky, Calendar: cal, Windows: s.Windows, Workers: o.Workers},
 			scheduler.Params{Effort: "quick", Seed: seed})
 		if err == nil {
 			err = ctx.Err()
