@@ -48,7 +48,8 @@ the end of each month; the hours that clouds take; and, for some seasons, how
 far a way of acting is from a plan that knew the weather (--hindsight).
 
 Ways of acting:
-  planned    follow the plan's lists; what clouds took is tried in free time
+  planned    follow the plan's lists; free time goes to what clouds took, and to
+             what the plan left out
   fixed      take the visit worth most of its time, at the plan's prices
   resolved   the same at prices worked out anew each evening
   densest    the same with no thought of later

@@ -44,7 +44,7 @@ func (f *planFlags) ask(cmd *cobra.Command, out string) (work.PlanAsk, error) {
 
 func (a *app) planCommand() *cobra.Command {
 	var f planFlags
-	var out string
+	var out, weather string
 	var asCSV bool
 	c := a.command("plan SURVEY", 0, &cobra.Command{
 		Short: "plan the survey: which telescope takes which field at which time",
@@ -52,6 +52,11 @@ func (a *app) planCommand() *cobra.Command {
 a ceiling that no legal plan can exceed, has every visit checked afresh by the
 audit, and writes a plan folder: Parquet tables, plan.json, and a copy of the
 survey's files. A plan that fails its audit isn't written.
+
+With --weather expected each night is filled to the part that the sites' weather
+leaves on the mean, by the visits worth most; what is left free takes up what
+clouds take. Prices are those of the scarcer time, and expected_ceiling bounds
+the mean coverage that any way of acting can have.
 
 The same survey and seed give the same plan, whatever the number of workers.
 Interrupted (Ctrl-C), it has the best plan so far audited and writes it, marked
@@ -65,9 +70,15 @@ in plan.json; where a plan stands already it goes beside it, into a folder with
 		if err != nil {
 			return err
 		}
+		if ask.Weather = weather; weather != "" && weather != "expected" {
+			return work.Inputf("--weather is %q; want expected, or leave it out to plan for clear skies", weather)
+		}
 		s, err := a.survey(args[0])
 		if err != nil {
 			return err
+		}
+		if weather != "" {
+			a.noWeather(s)
 		}
 		if m := s.MemoryNote(); m != "" {
 			a.note("%s", m)
@@ -103,6 +114,7 @@ in plan.json; where a plan stands already it goes beside it, into a folder with
 		return cmp.Or(p.flush(), kept)
 	})
 	f.add(c.Flags(), "normal")
+	c.Flags().StringVar(&weather, "weather", "", "plan for `WHAT` weather: expected; without it for clear skies")
 	c.Flags().StringVar(&out, "out", "", "write the plan to `FOLDER` (default: plan in the survey folder); a plan there is replaced")
 	c.Flags().BoolVar(&asCSV, "csv", false, "write the visits as CSV on stdout instead of the summary")
 	return c

@@ -20,6 +20,10 @@ func (p *printer) plan(s *work.Survey, r *work.PlanResult) {
 	}
 	p.line("")
 	p.line("  coverage %.4f   ceiling %.4f   gap %s", m.Coverage, m.Ceiling, percent(m.Gap, 1))
+	if m.Expected > 0 {
+		p.line("  planned for the expected weather, under which no way of acting has a mean")
+		p.line("  coverage above %.4f (expected_ceiling)", m.Expected)
+	}
 	p.line("  visits   %s of %s wanted   fields finished %s of %s",
 		thousands(int(m.VisitsGot)), thousands(int(m.VisitsWanted)), thousands(int(m.FieldsFinished)), thousands(int(m.FieldsWanted)))
 	p.line("  hours    dark %s   open %s   used %s (%s of open)",

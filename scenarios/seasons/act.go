@@ -35,7 +35,7 @@ func (pl *Player) act(s *scope) {
 	if len(s.pending) > 0 {
 		c := &s.pending[0]
 		if start := pl.soonest(s, c.want, c.step, c.earliest); start > c.latest {
-			pl.abandon(s, 0)
+			pl.abandon(s)
 			return
 		} else if start <= s.at+model.Micro || c.earliest <= s.at+pl.usualGap(s) {
 			pl.follow(s, start)

@@ -144,9 +144,6 @@ func (pl *Player) expose(s *scope, b *begun, step int32, start int64) {
 		}
 		return
 	}
-	if b.planned {
-		return // the list has the next
-	}
 	next := &w.Steps[step+1]
 	pl.due(s, commit{want: b.want, step: step + 1, earliest: start + next.After - next.Tolerance, latest: start + next.After + next.Tolerance, set: b})
 }
@@ -169,27 +166,24 @@ func (pl *Player) follow(s *scope, start int64) {
 	s.pending = s.pending[:copy(s.pending, s.pending[1:])]
 	w := &p.Wants[c.want]
 	length := p.Length(&w.Steps[c.step], s.id)
-	if c.set != nil && !c.set.planned {
-		if late := pl.overBudget(s, start, length); start+late <= c.latest {
-			start += late
-		} else {
-			pl.fail(s, c.set)
-			return
-		}
+	if start += pl.overBudget(s, start, length); start > c.latest {
+		pl.giveUp(s, c)
+		return
 	}
-	can := pl.sky.Open(int(s.site), hourOf(start)) && pl.legal(s, w, start, length)
+	span := length
+	if c.set != nil && c.step == 0 {
+		span = pl.st.span(w, s.id)
+	}
+	can := pl.sky.Open(int(s.site), hourOf(start)) && pl.legal(s, w, start, span)
 	if c.step == 0 { // of a list: what was made up for may be too near
 		can = can && start-pl.last[c.want] >= w.Spacing && pl.f.left[c.want] > 0
 	}
 	switch {
-	case c.set == nil && can:
-		pl.single(s, c.want, start, true)
+	case !can:
+		pl.giveUp(s, c)
 		return
 	case c.set == nil:
-		pl.lost[c.want]++
-		return
-	case !can:
-		pl.fail(s, c.set)
+		pl.single(s, c.want, start, true)
 		return
 	case !c.set.claimed:
 		pl.claimSet(s, c.set, start)
@@ -198,9 +192,14 @@ func (pl *Player) follow(s *scope, start int64) {
 }
 
 // abandon gives up an exposure that came too late, and its set.
-func (pl *Player) abandon(s *scope, i int) {
-	c := s.pending[i]
-	s.pending = append(s.pending[:i], s.pending[i+1:]...)
+func (pl *Player) abandon(s *scope) {
+	c := s.pending[0]
+	s.pending = s.pending[:copy(s.pending, s.pending[1:])]
+	pl.giveUp(s, c)
+}
+
+// giveUp leaves an exposure that was due, and its set.
+func (pl *Player) giveUp(s *scope, c commit) {
 	if c.set == nil {
 		pl.lost[c.want]++
 		return
@@ -234,6 +233,6 @@ func (pl *Player) fail(s *scope, b *begun) {
 // drop gives up what is due when a night ends.
 func (pl *Player) drop(s *scope) {
 	for len(s.pending) > 0 {
-		pl.abandon(s, 0)
+		pl.abandon(s)
 	}
 }

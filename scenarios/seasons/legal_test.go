@@ -15,8 +15,12 @@ import (
 // must come out the same. The judge knows nothing of this package.
 func TestSeasonsAreLegal(t *testing.T) {
 	for _, sv := range []*stageKit{build(t, small()), build(t, demo(t, 6))} {
-		for _, policy := range []Policy{FixedPrices, Resolved, Densest} {
-			o := play(t, sv.Stage, Cast{Policy: policy, Record: true}, 5, 1, 1)[0]
+		plan, err := scheduler.Solve(context.Background(), scheduler.Input{Survey: sv.Survey, Sky: sv.sky, Calendar: sv.p.Calendar, Windows: sv.win, Workers: 2}, scheduler.Params{Effort: "quick"})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, policy := range []Policy{AsPlanned, FixedPrices, Resolved, Densest} {
+			o := play(t, sv.Stage, Cast{Policy: policy, Record: true, List: plan.Plan.Exposures}, 5, 1, 1)[0]
 			known, losses := sv.Known(5, 0)
 			for i := range o.Taken {
 				o.Taken[i].Visit = int64(i + 1)

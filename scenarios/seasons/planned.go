@@ -20,9 +20,9 @@ type plannedVisit struct {
 	night int32
 }
 
-// lateness is how much later than planned an exposure may start, us: the
-// telescope doesn't drop one for being a little behind.
-const lateness = 120 * model.Micro
+// shift is how much earlier or later than planned a visit may start, us: who
+// is ahead of the list goes on with it, who is behind catches up.
+const shift = 30 * 60 * model.Micro
 
 // newPlanned sorts a plan's exposures into lists. Exposures of demands that
 // the problem doesn't have are left out.
@@ -57,14 +57,13 @@ func (pl *Player) takeList(s *scope) {
 		return
 	}
 	k := int(s.id)*pl.st.p.Nights + int(s.night)
-	sets := map[int64]*begun{}
 	for i, e := range pl.lists.nights[k] {
-		c := commit{want: pl.lists.wants[k][i], step: e.Step, earliest: e.Start, latest: e.Start + lateness}
-		if e.Set != 0 {
-			if sets[e.Set] == nil {
-				sets[e.Set] = &begun{want: c.want, planned: true}
-			}
-			c.set = sets[e.Set]
+		if e.Step > 0 {
+			continue // the steps of a set follow its first
+		}
+		c := commit{want: pl.lists.wants[k][i], earliest: e.Start - shift, latest: e.Start + shift}
+		if len(pl.st.p.Wants[c.want].Steps) > 1 {
+			c.set = &begun{want: c.want, planned: true}
 		}
 		pl.due(s, c)
 	}

@@ -15,8 +15,8 @@ type Policy uint8
 
 // The policies.
 const (
-	// AsPlanned follows the plan's lists; what clouds took is tried again in
-	// time that the lists leave free.
+	// AsPlanned follows the plan's lists; time that they leave free goes to what
+	// clouds took and to what the plan left out.
 	AsPlanned Policy = iota + 1
 	// FixedPrices takes the visit worth most of its time, against prices that
 	// were set before the season.
@@ -77,7 +77,7 @@ type Player struct {
 	nightOf  []int32 // [want] label of the last visit
 	tonight  []int32 // [want] visits with that label
 	field    []int32 // [field] visits left
-	lost     []int32 // [want] planned visits that clouds took
+	lost     []int32 // [want] visits for free time: what clouds took and the plan left out
 	next     []int32 // [want] the next of the planned starts
 	earned   []float64
 	finish   []int32
@@ -129,7 +129,7 @@ type begun struct {
 	quality float64
 	time    int64 // exposures so far, us
 	taken   []model.Exposure
-	planned bool // of a plan's list, which has all its steps
+	planned bool // from a plan's list
 	claimed bool
 	dead    bool
 }
@@ -212,6 +212,9 @@ func (pl *Player) reset(k int) {
 	for w := range p.Wants {
 		pl.last[w], pl.nightOf[w], pl.tonight[w] = math.MinInt64/2, -1, 0
 		pl.f.left[w], pl.lost[w], pl.next[w] = p.Wants[w].Visits, 0, 0
+		if pl.lists != nil { // what the plan leaves out may go into free time
+			pl.lost[w] = max(0, p.Wants[w].Visits-int32(len(pl.lists.starts[w])))
+		}
 	}
 	for f := range pl.field {
 		pl.field[f], pl.finish[f] = int32(pl.st.Survey.Wanted(&pl.st.Survey.Fields[f])), -1

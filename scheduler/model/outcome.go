@@ -7,6 +7,7 @@ type Outcome struct {
 	Plan     *Plan
 	Coverage float64 // C of the plan, 0..1
 	Ceiling  float64 // no legal plan's C exceeds it
+	Expected float64 // no way of acting has a greater mean C under the expected weather; 0: not worked out
 	Status   Status
 	Effort   string // quick, normal or thorough
 	Seed     uint64

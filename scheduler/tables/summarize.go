@@ -12,7 +12,7 @@ func (b *builder) summary(pt *PlanTables) Summary {
 		SchemaVersion: SchemaVersion, Kind: SummaryKind, Survey: sv.Name,
 		FirstNight: sv.FirstNight.String(), LastNight: sv.LastNight.String(),
 		Seed: b.out.Seed, Effort: b.out.Effort, Status: b.out.Status.String(),
-		Score: b.tally.score(nil), Ceiling: b.out.Ceiling,
+		Score: b.tally.score(nil), Ceiling: b.out.Ceiling, Expected: b.out.Expected,
 		Programs: b.programs(), Search: []Counter{}, Files: []FileSum{}, Tables: []TableSum{},
 	}
 	// A recount over the ceiling by rounding alone is no gap below 0.

@@ -23,8 +23,11 @@ type Summary struct {
 	Effort        string `json:"effort"`
 	Status        string `json:"status"`
 	Score
-	Ceiling    float64            `json:"ceiling"`
-	Gap        float64            `json:"gap"` // (ceiling - coverage) / ceiling
+	Ceiling float64 `json:"ceiling"`
+	Gap     float64 `json:"gap"` // (ceiling - coverage) / ceiling
+	// Expected bounds the mean coverage of every way of acting under the expected
+	// weather; only plans for it have it.
+	Expected   float64            `json:"expected_ceiling,omitempty"`
 	Hours      Hours              `json:"hours"`
 	Programs   []ProgramSummary   `json:"programs"`
 	Sites      []SiteSummary      `json:"sites"`

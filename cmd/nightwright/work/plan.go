@@ -23,7 +23,8 @@ type PlanAsk struct {
 	TimeLimit time.Duration // 0: none; a plan that was cut short says so and can't be repeated
 	// Keep writes the best plan so far when the context ends during the search:
 	// where the plan was to go, or, when a plan stands there, beside it.
-	Keep bool
+	Keep    bool
+	Weather string // expected: plan for the weather that is to be expected; "": for clear skies
 }
 
 // PlanResult is a plan that passed its audit and was written.
@@ -143,9 +144,15 @@ func solve(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*model.Outco
 	if ask.Seed != nil {
 		seed = *ask.Seed
 	}
-	out, err := scheduler.Solve(limited, scheduler.Input{
-		Survey: s.Survey, Sky: s.Sky, Calendar: s.Calendar, Windows: s.Windows, Workers: o.Workers,
-	}, scheduler.Params{Effort: ask.Effort, Seed: seed, Progress: o.Progress, Prices: prices})
+	in := scheduler.Input{Survey: s.Survey, Sky: s.Sky, Calendar: s.Calendar, Windows: s.Windows, Workers: o.Workers}
+	params := scheduler.Params{Effort: ask.Effort, Seed: seed, Progress: o.Progress, Prices: prices}
+	var out *model.Outcome
+	var err error
+	if ask.Weather == "expected" {
+		out, err = scheduler.SolveExpected(limited, in, params, s.expectedWeather())
+	} else {
+		out, err = scheduler.Solve(limited, in, params)
+	}
 	if stop := ctx.Err(); stop != nil && (!ask.Keep || out == nil || len(out.Plan.Exposures) == 0) {
 		return nil, stop
 	}
