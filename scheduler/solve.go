@@ -142,8 +142,10 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	if relaxed {
 		ceiling = ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)
 	}
+	anatomy := Dissect(c.p, plan, s.Coverage(), ceiling, prices)
 	return &model.Outcome{
-		Plan: plan, Coverage: s.Coverage(), Ceiling: ceiling, Status: status,
+		Parts: anatomy.Parts(),
+		Plan:  plan, Coverage: s.Coverage(), Ceiling: ceiling, Status: status,
 		Prices: prices, Stats: s.Stats().List(), Shares: told,
 	}
 }

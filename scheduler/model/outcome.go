@@ -14,6 +14,7 @@ type Outcome struct {
 	Prices   []Price // ascending in (Telescope, SlotStart)
 	Shares   []ShareOutcome
 	Stats    []Stat // counters of the search, in a fixed order
+	Parts    []Part // what the gap is made of; they sum to ceiling - coverage
 }
 
 // Gap returns (ceiling - coverage) / ceiling, and 0 when the ceiling is 0.
@@ -44,6 +45,12 @@ type ShareOutcome struct {
 type Stat struct {
 	Name  string
 	Value int64
+}
+
+// Part is one part of the gap between ceiling and plan.
+type Part struct {
+	Name  string
+	Worth float64 // C
 }
 
 // Status says why a search ended.
