@@ -21,12 +21,67 @@ type family struct {
 	programs int
 	gapMin   float64 // s, the least gap of the demand that is asked for most often
 	set      bool    // the last program asks for a set of two filters
+	polar    bool    // the sites lie on the ice about the south pole, in June
+	twist    func(sv *survey.Survey)
 }
 
 var families = []family{
-	{"medium", 4, 60, 1000, 150, 500, 1.05, 4, 20 * 3600, true},
-	{"small", 2, 14, 150, 900, 2400, 1.05, 3, 20 * 3600, false},
-	{"tiny", 2, 3, 25, 4000, 8000, 1.3, 5, 4 * 3600, false},
+	{name: "medium", sites: 4, nights: 60, fields: 1000, shortest: 150, longest: 500, demand: 1.05, programs: 4, gapMin: 20 * 3600, set: true},
+	{name: "small", sites: 2, nights: 14, fields: 150, shortest: 900, longest: 2400, demand: 1.05, programs: 3, gapMin: 20 * 3600},
+	{name: "tiny", sites: 2, nights: 3, fields: 25, shortest: 4000, longest: 8000, demand: 1.3, programs: 5, gapMin: 4 * 3600},
+	{name: "short", sites: 2, nights: 8, fields: 500, shortest: 30, longest: 60, demand: 1.05, programs: 3, gapMin: 20 * 3600},
+	{name: "long", sites: 2, nights: 20, fields: 80, shortest: 3000, longest: 6000, demand: 1.1, programs: 4, gapMin: 20 * 3600},
+	{name: "cadence", sites: 3, nights: 30, fields: 400, shortest: 200, longest: 500, demand: 1.05, programs: 3, gapMin: 5 * 86400, twist: strict},
+	{name: "sets", sites: 2, nights: 14, fields: 250, shortest: 120, longest: 300, demand: 1.05, programs: 3, gapMin: 20 * 3600, twist: allSets},
+	{name: "filters", sites: 2, nights: 14, fields: 250, shortest: 200, longest: 400, demand: 1.05, programs: 4, gapMin: 20 * 3600, twist: slowChanges},
+	{name: "shares", sites: 2, nights: 14, fields: 250, shortest: 200, longest: 500, demand: 1.2, programs: 4, gapMin: 20 * 3600, twist: tightShares},
+	{name: "polar", sites: 1, nights: 8, fields: 250, shortest: 200, longest: 500, demand: 1.05, programs: 3, gapMin: 12 * 3600, polar: true},
+	{name: "one-site", sites: 1, nights: 30, fields: 250, shortest: 200, longest: 500, demand: 1.05, programs: 3, gapMin: 20 * 3600},
+	{name: "eight-sites", sites: 8, nights: 8, fields: 600, shortest: 200, longest: 500, demand: 1.05, programs: 4, gapMin: 20 * 3600},
+}
+
+// strict asks for one visit a night at most, and for none to be late.
+func strict(sv *survey.Survey) {
+	for p := range sv.Programs {
+		for d := range sv.Programs[p].Demands {
+			x := &sv.Programs[p].Demands[d]
+			x.PerNight, x.GapMax = 1, 2*x.GapMin
+		}
+	}
+}
+
+// allSets makes every demand ask for a pair half an hour apart, half as often.
+func allSets(sv *survey.Survey) {
+	for p := range sv.Programs {
+		for d := range sv.Programs[p].Demands {
+			x := &sv.Programs[p].Demands[d]
+			again := x.Exposures[0]
+			again.After, again.Tolerance = 1800, 300
+			x.Exposures = append(x.Exposures, again)
+			x.Visits = (x.Visits + 1) / 2
+		}
+	}
+}
+
+// slowChanges makes a change of filter as long as an exposure.
+func slowChanges(sv *survey.Survey) {
+	for t := range sv.Telescopes {
+		sv.Telescopes[t].FilterChange = 300
+	}
+}
+
+// tightShares holds one program up and another down, against their weights.
+func tightShares(sv *survey.Survey) {
+	light, heavy := 0, 0
+	for p := range sv.Programs {
+		if sv.Programs[p].Weight < sv.Programs[light].Weight {
+			light = p
+		}
+		if sv.Programs[p].Weight >= sv.Programs[heavy].Weight {
+			heavy = p
+		}
+	}
+	sv.Programs[light].ShareMin, sv.Programs[heavy].ShareMax = 0.3, 0.2
 }
 
 // FamilyNames lists the families of surveys.
@@ -41,7 +96,8 @@ func FamilyNames() []string {
 // Family makes one survey of a family, always the same for a seed. medium is
 // 4 sites x 60 nights x 1,000 fields with exposures of 150-500 s; small 2 x
 // 14 x 150 with 900-2,400 s; tiny 2 x 3 x 25 with 4,000-8,000 s, small enough
-// for an exact solver. The time wanted is a little over the open time. It is
+// for an exact solver; the others are each hard in one way, as their names say.
+// The time wanted is a little over the open time. It is
 // nil when the name is not known.
 func Family(name string, seed uint64) *survey.Survey {
 	for i := range families {
@@ -52,15 +108,23 @@ func Family(name string, seed uint64) *survey.Survey {
 	return nil
 }
 
-// familyFirstNight is the first night of all families, 2027-03-01.
-const familyFirstNight survey.Day = 20878
+// familyFirstNight is the first night of the families, 2027-03-01;
+// polarFirstNight, 2027-06-15, that of those in the polar night.
+const (
+	familyFirstNight survey.Day = 20878
+	polarFirstNight  survey.Day = 20984
+)
 
 func (f *family) make(seed uint64) *survey.Survey {
 	r := rand.New(rand.NewPCG(seed, 20270301))
+	first := familyFirstNight
+	if f.polar {
+		first = polarFirstNight
+	}
 	sv := &survey.Survey{
 		Name:       fmt.Sprintf("%s %d", f.name, seed),
-		FirstNight: familyFirstNight,
-		LastNight:  familyFirstNight + survey.Day(f.nights) - 1,
+		FirstNight: first,
+		LastNight:  first + survey.Day(f.nights) - 1,
 		Slot:       600,
 		Seed:       seed,
 		Filters: []visibility.Filter{
@@ -72,6 +136,9 @@ func (f *family) make(seed uint64) *survey.Survey {
 	f.addPrograms(sv, r)
 	f.addFields(sv, r)
 	f.addVisits(sv, r, open*f.demand)
+	if f.twist != nil {
+		f.twist(sv)
+	}
 	return sv
 }
 
@@ -84,6 +151,9 @@ func (f *family) addSites(sv *survey.Survey, r *rand.Rand) float64 {
 		p := plainSite{latitude: 22 + 13*r.Float64(), longitude: start + 360/float64(f.sites)*(float64(i)+0.6*r.Float64()-0.3)}
 		if i%2 == 1 {
 			p.latitude = -p.latitude
+		}
+		if f.polar {
+			p.latitude = -84 - 4*r.Float64()
 		}
 		p.longitude = math.Mod(p.longitude+540, 360) - 180
 		places = append(places, p)
@@ -111,7 +181,7 @@ func (f *family) addSites(sv *survey.Survey, r *rand.Rand) float64 {
 			Reserved:      []survey.Reserved{{At: survey.AtOpening, Takes: 900, Why: "standards"}, {At: survey.AtEvery, Every: 7200, Takes: 180, Why: "focus"}},
 		})
 	}
-	return supply(places, int(familyFirstNight)-epochDay, f.nights, -15)
+	return supply(places, int(sv.FirstNight)-epochDay, f.nights, -15)
 }
 
 // addPrograms draws what is asked for; the numbers of visits come last.
@@ -159,6 +229,9 @@ func (f *family) addFields(sv *survey.Survey, r *rand.Rand) {
 		HourAngleMax:        75 * degree,
 		MinQuality:          0.1,
 	}
+	if f.polar {
+		rules.HourAngleMax = math.Pi
+	}
 	byProgram := make([][]survey.Rules, len(sv.Programs))
 	for p := range byProgram {
 		for range sv.Programs[p].Demands {
@@ -170,6 +243,9 @@ func (f *family) addFields(sv *survey.Survey, r *rand.Rand) {
 	middle := 180 + 360*(float64(f.nights)/2-20)/365.25
 	for i := range f.fields {
 		at := scattered(r, patch{-60, 55, middle - 105, middle + 105})
+		if f.polar { // what is up there is up all day
+			at = scattered(r, patch{-80, -35, 0, 360})
+		}
 		p := i % len(sv.Programs)
 		sv.Fields = append(sv.Fields, survey.Field{
 			Name:      fmt.Sprintf("F%04d", i+1),
