@@ -6,12 +6,17 @@ import (
 	"nightwright/scheduler/model"
 )
 
-// shares works out each program's part of the scaled exposure time and
+// shares works out each program's part of the scaled exposure time, planned and
+// given, and
 // whether its bounds hold to within one visit.
 func shares(p *model.Problem, plan *model.Plan) []model.ShareOutcome {
 	sv := p.Survey
 	time := make([]float64, len(sv.Programs))
 	var all float64
+	for i, s := range p.GivenSeconds {
+		time[i] += s
+		all += s
+	}
 	for i := range plan.Exposures {
 		e := &plan.Exposures[i]
 		s := model.Sec(e.End - e.Start)

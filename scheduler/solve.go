@@ -24,6 +24,7 @@ type Input struct {
 	Calendar *constraints.Calendar
 	Windows  *constraints.Windows
 	Workers  int
+	Past     *Past // nil: nothing was done yet
 }
 
 // Params steer a search. Steps, not seconds, decide the result; a context
@@ -51,6 +52,9 @@ func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error)
 	if err != nil {
 		return nil, err
 	}
+	if in.Past != nil {
+		p = p.Take(in.Past.given(p))
+	}
 	c := &conductor{p: p, ctx: ctx, prices: ctx, effort: effort, report: params.Progress}
 	if params.Prices != nil {
 		c.prices = params.Prices
@@ -60,6 +64,9 @@ func Solve(ctx context.Context, in Input, params Params) (*model.Outcome, error)
 	}
 	out := c.solve(params.Seed)
 	out.Effort, out.Seed = params.Effort, params.Seed
+	if in.Past != nil {
+		out.Plan = in.Past.merge(out.Plan)
+	}
 	return out, nil
 }
 

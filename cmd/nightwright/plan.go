@@ -44,7 +44,7 @@ func (f *planFlags) ask(cmd *cobra.Command, out string) (work.PlanAsk, error) {
 
 func (a *app) planCommand() *cobra.Command {
 	var f planFlags
-	var out, weather string
+	var out, weather, now string
 	var asCSV bool
 	c := a.command("plan SURVEY", 0, &cobra.Command{
 		Short: "plan the survey: which telescope takes which field at which time",
@@ -57,6 +57,9 @@ With --weather expected each night is filled to the part that the sites' weather
 leaves on the mean, by the visits worth most; what is left free takes up what
 clouds take. Prices are those of the scarcer time, and expected_ceiling bounds
 the mean coverage that any way of acting can have.
+
+What the ledger has as done is taken as it is and counts; the plan goes on from
+the end of the last exposure there, or from --now.
 
 The same survey and seed give the same plan, whatever the number of workers.
 Interrupted (Ctrl-C), it has the best plan so far audited and writes it, marked
@@ -73,6 +76,7 @@ in plan.json; where a plan stands already it goes beside it, into a folder with
 		if ask.Weather = weather; weather != "" && weather != "expected" {
 			return work.Inputf("--weather is %q; want expected, or leave it out to plan for clear skies", weather)
 		}
+		ask.Now = now
 		s, err := a.survey(args[0])
 		if err != nil {
 			return err
@@ -115,6 +119,7 @@ in plan.json; where a plan stands already it goes beside it, into a folder with
 	})
 	f.add(c.Flags(), "normal")
 	c.Flags().StringVar(&weather, "weather", "", "plan for `WHAT` weather: expected; without it for clear skies")
+	c.Flags().StringVar(&now, "now", "", "plan nothing before this `INSTANT`, such as 2027-03-10T12:00:00Z (default: the end of what was done)")
 	c.Flags().StringVar(&out, "out", "", "write the plan to `FOLDER` (default: plan in the survey folder); a plan there is replaced")
 	c.Flags().BoolVar(&asCSV, "csv", false, "write the visits as CSV on stdout instead of the summary")
 	return c

@@ -113,9 +113,7 @@ func (c *trial) weigh(v *visit) {
 	for _, x := range v.shots {
 		q := x.quality
 		if x.done {
-			if q = c.done[doneKey{x.Telescope, x.Start}]; !(q >= 0 && q <= 1) {
-				q = 0
-			}
+			q = c.doneQuality(x)
 			x.quality = q
 		}
 		v.quality += q / float64(len(v.shots))
@@ -184,4 +182,27 @@ func (j *Judge) unit(field int) float64 {
 		return 0
 	}
 	return j.weight(field) / (float64(j.wanted(field)) * (1 + j.sv.FinishBonus) * j.total)
+}
+
+// doneQuality is what the ledger says of an exposure that was done; where it
+// says nothing (NaN), the quality of the exact sky times the part of the wanted
+// time that the exposure had.
+func (c *trial) doneQuality(s *shot) float64 {
+	q, ok := c.done[doneKey{s.Telescope, s.Start}]
+	if !math.IsNaN(q) || !ok {
+		return math.Max(0, math.Min(1, q))
+	}
+	d := c.demand(s)
+	step := s.step
+	if step < 0 { // of a broken set: the first exposure in its filter
+		step = slices.IndexFunc(d.Exposures, func(x survey.Exposure) bool { return x.Filter == s.filter })
+	}
+	if step < 0 {
+		return 0
+	}
+	want := d.Exposures[step].Duration * c.j.sv.Telescopes[s.scope].ExposureScale
+	if had := s.to - s.from; had < want-rootSlack {
+		return s.quality * had / want
+	}
+	return s.quality
 }

@@ -63,8 +63,8 @@ type Visit struct {
 // Done is one exposure of the ledger.
 type Done struct {
 	Telescope string
-	Start     int64 // UTC, Unix microseconds
-	Quality   float64
+	Start     int64   // UTC, Unix microseconds
+	Quality   float64 // the telescope's own; NaN: it gave none
 }
 
 // Totals is what a plan claims of itself. A nil slice is not judged.

@@ -106,11 +106,11 @@ func TestDoneForIsDoneOfTheSurvey(t *testing.T) {
 	b.sv.Fields = b.sv.Fields[2:] // A1 and A2 are other surveys'
 	l := b.open()
 	defer l.Close()
-	small, err := l.DoneFor(t.Context(), b.sv)
+	small, err := l.DoneFor(t.Context(), b.sv, Now)
 	if err != nil {
 		t.Fatal(err)
 	}
-	large, err := l.done(t.Context(), b.sv)
+	large, err := l.done(t.Context(), b.sv, Now)
 	if err != nil {
 		t.Fatal(err)
 	}

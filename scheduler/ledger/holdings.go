@@ -16,16 +16,17 @@ import (
 // as corrected, withdrawn ones not at all, unmatched ones with their reason. They
 // are ordered by start and telescope.
 func (l *Ledger) Done(ctx context.Context) ([]Exposure, error) {
-	return l.done(ctx, nil)
+	return l.done(ctx, nil, Now)
 }
 
 // fewRows is up to how many exposures a ledger is read whole; a larger one is
 // asked field by field.
 const fewRows = 50_000
 
-// DoneFor returns those exposures of Done that are of fields of the survey.
-// Its time goes with their number, not with that of the whole ledger.
-func (l *Ledger) DoneFor(ctx context.Context, sv *survey.Survey) ([]Exposure, error) {
+// DoneFor returns those exposures of Done that are of fields of the survey, as
+// they stood after an entry (Now: as they stand now). Its time goes with their
+// number, not with that of the whole ledger.
+func (l *Ledger) DoneFor(ctx context.Context, sv *survey.Survey, upTo int64) ([]Exposure, error) {
 	if l.empty() {
 		return nil, nil
 	}
@@ -34,22 +35,22 @@ func (l *Ledger) DoneFor(ctx context.Context, sv *survey.Survey) ([]Exposure, er
 		return nil, l.explain(err)
 	}
 	if n.Int64 > fewRows {
-		return l.done(ctx, sv)
+		return l.done(ctx, sv, upTo)
 	}
 	fields := make(map[string]bool, len(sv.Fields))
 	for i := range sv.Fields {
 		fields[sv.Fields[i].Name] = true
 	}
-	all, err := l.done(ctx, nil)
+	all, err := l.done(ctx, nil, upTo)
 	return slices.DeleteFunc(all, func(e Exposure) bool { return !fields[e.Field] }), err
 }
 
 const selectDone = `SELECT e.id, e.entry, e.row, e.field, e.program, e.demand, e.filter, e.site, e.telescope, e.night, e.start_utc, e.end_utc,
  e.quality, e.set_id, e.visit, e.unmatched FROM exposures e
-WHERE e.what <> 'withdraw' AND NOT EXISTS (SELECT 1 FROM exposures r WHERE r.replaces = e.id)`
+WHERE e.entry <= ?1 AND e.what <> 'withdraw' AND NOT EXISTS (SELECT 1 FROM exposures r WHERE r.replaces = e.id AND r.entry <= ?1)`
 
-// done reads all exposures, or with a survey those of its fields.
-func (l *Ledger) done(ctx context.Context, sv *survey.Survey) ([]Exposure, error) {
+// done reads all exposures up to an entry, or with a survey those of its fields.
+func (l *Ledger) done(ctx context.Context, sv *survey.Survey, upTo int64) ([]Exposure, error) {
 	if l.empty() {
 		return nil, nil
 	}
@@ -69,20 +70,20 @@ func (l *Ledger) done(ctx context.Context, sv *survey.Survey) ([]Exposure, error
 	}
 	var out []Exposure
 	if sv == nil {
-		out, err = l.scan(ctx, tx, out, names, sources, selectDone)
+		out, err = l.scan(ctx, tx, out, names, sources, selectDone, upTo)
 	} else {
 		ids := make(map[string]int64, len(names))
 		for id, n := range names {
 			ids[n] = id
 		}
 		var stmt *sql.Stmt
-		if stmt, err = tx.PrepareContext(ctx, selectDone+" AND e.field = ?"); err != nil {
+		if stmt, err = tx.PrepareContext(ctx, selectDone+" AND e.field = ?2"); err != nil {
 			return nil, l.explain(err)
 		}
 		defer stmt.Close()
 		for i := 0; i < len(sv.Fields) && err == nil; i++ {
 			if id, ok := ids[sv.Fields[i].Name]; ok {
-				out, err = l.scanWith(stmt.QueryContext, ctx, out, names, sources, id)
+				out, err = l.scanWith(stmt.QueryContext, ctx, out, names, sources, upTo, id)
 			}
 		}
 	}
@@ -114,8 +115,8 @@ func (l *Ledger) table(ctx context.Context, q asker, query string) (map[int64]st
 	return out, l.explain(rows.Err())
 }
 
-func (l *Ledger) scan(ctx context.Context, q asker, out []Exposure, names, sources map[int64]string, query string) ([]Exposure, error) {
-	return l.scanWith(func(ctx context.Context, args ...any) (*sql.Rows, error) { return q.QueryContext(ctx, query, args...) }, ctx, out, names, sources)
+func (l *Ledger) scan(ctx context.Context, q asker, out []Exposure, names, sources map[int64]string, query string, upTo int64) ([]Exposure, error) {
+	return l.scanWith(func(ctx context.Context, args ...any) (*sql.Rows, error) { return q.QueryContext(ctx, query, args...) }, ctx, out, names, sources, upTo)
 }
 
 // scanWith appends the exposures of one query.

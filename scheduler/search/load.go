@@ -12,7 +12,6 @@ import (
 type Old struct {
 	Want, Scope, Night int32
 	Starts             []int64 // of its exposures, us
-	Charge             float64 // C that taking it out costs
 }
 
 // Refusal says why a visit of an earlier plan can't stand; "" is a visit that
@@ -72,7 +71,8 @@ func (s *state) occupy(busy []model.Exposure) {
 }
 
 // Load puts visits of an earlier plan where they were, as far as they are legal
-// by the problem as it is now, and says of each why it can't stand. Visits that
+// by the problem as it is now, and says of each why it can't stand. Until Settle
+// nothing can push them. Visits that
 // come earlier in the list go first.
 func (x *Search) Load(list []Old) []Refusal {
 	s := x.s
@@ -104,11 +104,24 @@ func (x *Search) Load(list []Old) []Refusal {
 			s.admit(k, byNight[k], list, entries, out)
 		}
 	}
-	x.windows(list)
 	if invariants {
 		s.verify()
 	}
 	return out
+}
+
+// Settle says how firm the loaded visits are: what taking any of them out costs
+// (C), and how far they may be pushed to make room, as part of what a visit that
+// is placed afresh may be: 0 to 1. list is that of Load.
+func (x *Search) Settle(list []Old, charge, leeway float64) {
+	s := x.s
+	s.charged = 0
+	for i := range s.visits {
+		if v := &s.visits[i]; v.ref > 0 && v.alive && !v.fixed {
+			v.charge = int64(math.Round(charge * scoreUnit))
+		}
+	}
+	x.windows(list, leeway)
 }
 
 // loadChunk is how many visits are one piece of work.
@@ -258,10 +271,8 @@ func (s *state) admit(index int, ids []int32, list []Old, entries [][]entry, out
 		o := &list[i]
 		id := int32(len(s.visits))
 		s.visits = append(s.visits, visit{
-			want: o.Want, scope: scope, night: night, born: -1, start: o.Starts[0], early: o.Starts[0], late: o.Starts[0],
-			charge: int64(math.Round(o.Charge * scoreUnit)), ref: i + 1,
+			want: o.Want, scope: scope, night: night, born: -1, start: o.Starts[0], early: o.Starts[0], late: o.Starts[0], ref: i + 1,
 		})
-		s.charged += s.visits[id].charge
 		s.remember(id)
 		for k := range entries[i] {
 			e := &entries[i][k]
@@ -279,7 +290,7 @@ func (s *state) admit(index int, ids []int32, list []Old, entries [][]entry, out
 // windows opens the shift windows of loaded visits: legal starts, 20 minutes,
 // half of the cadence slack and of a set's tolerance, as for visits that are
 // placed afresh.
-func (x *Search) windows(list []Old) {
+func (x *Search) windows(list []Old, leeway float64) {
 	s := x.s
 	starts := make([][]int64, len(s.of)) // before anything is shifted
 	for wi := range s.of {
@@ -294,7 +305,7 @@ func (x *Search) windows(list []Old) {
 			e := &n.list[i]
 			v := &s.visits[e.visit]
 			if !v.fixed && v.ref > 0 {
-				s.openWindow(e, v, starts[e.want], &list[v.ref-1])
+				s.openWindow(e, v, starts[e.want], &list[v.ref-1], leeway)
 			}
 		}
 	})
@@ -308,9 +319,10 @@ func (x *Search) windows(list []Old) {
 }
 
 // openWindow sets the shift window of one entry.
-func (s *state) openWindow(e *entry, v *visit, starts []int64, o *Old) {
+func (s *state) openWindow(e *entry, v *visit, starts []int64, o *Old, leeway float64) {
 	w := &s.p.Wants[e.want]
-	lo, hi := int64(-maxShift), int64(maxShift)
+	reach := int64(leeway * maxShift)
+	lo, hi := -reach, reach
 	at := o.Starts[0]
 	down, up := w.Slack(at)
 	lo, hi = max(lo, down), min(hi, up)
@@ -321,13 +333,14 @@ func (s *state) openWindow(e *entry, v *visit, starts []int64, o *Old) {
 	if k+1 < len(starts) {
 		hi = min(hi, (starts[k+1]-at-w.Spacing)/2)
 	}
-	if len(w.Steps) > 1 {
-		half := s.half(w)
-		lo, hi = max(lo, -half), min(hi, half)
-		if j := int(e.step); j > 0 {
-			off := o.Starts[j] - o.Starts[j-1] - w.Steps[j].After
-			lo, hi = max(lo, -half-min(off, 0)), min(hi, half-max(off, 0))
+	// Of what the tolerance leaves between two steps of a set each takes half.
+	for j := max(1, int(e.step)); j <= min(int(e.step)+1, len(w.Steps)-1); j++ {
+		off := o.Starts[j] - o.Starts[j-1] - w.Steps[j].After
+		less, more := (w.Steps[j].Tolerance+off)/2, (w.Steps[j].Tolerance-off)/2
+		if j > int(e.step) {
+			less, more = more, less // this one is the step before
 		}
+		lo, hi = max(lo, -less), min(hi, more)
 	}
 	lo, hi = min(lo, 0), max(hi, 0)
 	early, late, ok := s.legalStarts(w, v.scope, int(v.night), e.start, e.length)

@@ -3,14 +3,12 @@ package search
 import (
 	"context"
 	"slices"
-
-	"nightwright/scheduler/model"
 )
 
 // Within says where WinBack looks.
 type Within struct {
-	From, To int  // nights [From, To), indices
-	Idle     bool // only telescope-nights with idle time for an exposure
+	From, To int    // nights [From, To), indices
+	Only     []bool // only these telescope-nights [telescope*nights + night]; nil: all
 }
 
 // WinBack adds visits that fields lack, in the order given, without moving the
@@ -25,9 +23,7 @@ func (x *Search) WinBack(ctx context.Context, fields []int, theta float64, in Wi
 	if pl.to <= pl.from {
 		return nil
 	}
-	if in.Idle {
-		pl.only = x.idle()
-	}
+	pl.only = in.Only
 	var displaced []int
 	for i, f := range fields {
 		if i%16 == 0 && ctx.Err() != nil {
@@ -83,25 +79,7 @@ func (pl *placer) add(field int, displaced []int) []int {
 	return displaced
 }
 
-// idleLeast is how much idle time makes a telescope-night worth looking at for
-// more visits without anybody making room, us.
-const idleLeast = 120 * model.Micro
-
-// idle marks the telescope-nights with idle time.
-func (x *Search) idle() []bool {
-	out := make([]bool, len(x.s.nights))
-	for i := range x.s.nights {
-		var open int64
-		for _, o := range x.p.Open(i/x.p.Nights, i%x.p.Nights) {
-			open += o.To - o.From
-		}
-		out[i] = open-x.s.nights[i].used >= idleLeast
-	}
-	return out
-}
-
-// Lacking lists the fields that lack visits which some telescope may serve,
-// most valuable time first.
+// Lacking lists the fields that lack visits, most valuable time first.
 func (x *Search) Lacking() []int {
 	var out []int
 	for _, f := range x.byWorth() {
@@ -112,6 +90,17 @@ func (x *Search) Lacking() []int {
 	return out
 }
 
+// Lack returns how many visits a field lacks.
+func (x *Search) Lack(f int) int32 { return x.s.wanted[f] - x.s.got[f] }
+
+// ByWorth puts fields (ascending) in the order of their value by time.
+func (x *Search) ByWorth(fields []int) []int {
+	return slices.DeleteFunc(x.byWorth(), func(f int) bool {
+		_, ok := slices.BinarySearch(fields, f)
+		return !ok
+	})
+}
+
 // Keep returns a copy of the state that Return goes back to.
 func (x *Search) Keep() func() {
 	kept, charged := x.s.snapshot(), x.s.charged
@@ -120,17 +109,6 @@ func (x *Search) Keep() func() {
 		x.s.restore(kept)
 		x.s.charged = charged
 		copy(x.pl.mu, mu)
-	}
-}
-
-// Charge sets what taking out any of the loaded visits costs, C.
-func (x *Search) Charge(charge float64) {
-	s := x.s
-	s.charged = 0
-	for i := range s.visits {
-		if v := &s.visits[i]; v.ref > 0 && v.alive && !v.fixed {
-			v.charge = int64(charge * scoreUnit)
-		}
 	}
 }
 

@@ -67,6 +67,9 @@ func (b *builder) lookAt(i int) {
 	half := float64(s.End-s.Start) / 2e6
 	at := b.exact.At(float64(s.Start)/1e6 + half)
 	l.star, l.light = sky(at, site, b.places[s.Field], b.sv.Filters[b.step(s).Filter])
+	if s.State == model.Done {
+		l.quality = s.Quality
+	}
 	l.start, l.end = spin(l.star, site, -half), spin(l.star, site, half)
 }
 

@@ -28,6 +28,7 @@ type Summary struct {
 	// Expected bounds the mean coverage of every way of acting under the expected
 	// weather; only plans for it have it.
 	Expected   float64            `json:"expected_ceiling,omitempty"`
+	Replan     *Replan            `json:"replan,omitempty"`
 	Hours      Hours              `json:"hours"`
 	Programs   []ProgramSummary   `json:"programs"`
 	Sites      []SiteSummary      `json:"sites"`
@@ -46,6 +47,26 @@ type Score struct {
 	VisitsWanted   int64   `json:"visits_wanted"`
 	FieldsFinished int64   `json:"fields_finished"`
 	FieldsWanted   int64   `json:"fields_wanted"`
+}
+
+// Replan says how a plan came out of an earlier one. Visits are counted by what
+// happened to them; sets count once.
+type Replan struct {
+	Now           string  `json:"now"` // UTC: nothing is planned before
+	HoldHours     float64 `json:"hold_hours"`
+	Stability     float64 `json:"stability"`
+	From          string  `json:"from_sha256"`     // of the earlier plan's plan.json
+	CeilingHeld   float64 `json:"ceiling_held"`    // of all plans that keep the hold too
+	Before        float64 `json:"coverage_before"` // of what was done and what could stay
+	VisitsDone    int     `json:"visits_done"`
+	VisitsHeld    int     `json:"visits_held"`
+	VisitsKept    int     `json:"visits_kept"`
+	VisitsLost    int     `json:"visits_lost"`
+	VisitsMoved   int     `json:"visits_moved"`   // to another telescope or night
+	VisitsDropped int     `json:"visits_dropped"` // they made room
+	VisitsNew     int     `json:"visits_new"`
+	CreditLost    float64 `json:"credit_lost"` // coverage that the lost visits were worth
+	CreditWon     float64 `json:"credit_won"`  // coverage won back
 }
 
 // Hours is time of telescopes, h.

@@ -16,7 +16,12 @@ func Audit(ctx context.Context, s *Survey, pt *tables.PlanTables, o Options) (*a
 	if err := s.TakeLossesOf(ctx, pt); err != nil {
 		return nil, err
 	}
-	r, err := audit.Check(ctx, audit.Input{Survey: s.Survey, Losses: s.Losses, Workers: o.Workers, Plan: claims(pt)})
+	plan := claims(pt)
+	var err error
+	if plan.Done, err = s.doneClaims(ctx, s.lossesUpTo); err != nil {
+		return nil, err
+	}
+	r, err := audit.Check(ctx, audit.Input{Survey: s.Survey, Losses: s.Losses, Workers: o.Workers, Plan: plan})
 	if err != nil {
 		return nil, err
 	}

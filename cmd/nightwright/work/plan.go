@@ -20,6 +20,7 @@ type PlanAsk struct {
 	Out       string        // the plan folder; "": plan in the survey folder
 	Effort    string        // quick, normal or thorough
 	Seed      *uint64       // nil: the survey's
+	Now       string        // instant before which nothing is planned any more; "": the end of the last exposure that was done
 	TimeLimit time.Duration // 0: none; a plan that was cut short says so and can't be repeated
 	// Keep writes the best plan so far when the context ends during the search:
 	// where the plan was to go, or, when a plan stands there, beside it.
@@ -73,10 +74,14 @@ func Plan(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*PlanResult, 
 	if err != nil {
 		return nil, err
 	}
+	past, err := s.pastFor(ctx, ask, knew)
+	if err != nil {
+		return nil, err
+	}
 	if err := s.OpenWindows(ctx, o); err != nil {
 		return nil, err
 	}
-	outcome, err := solve(ctx, s, ask, o)
+	outcome, err := solve(ctx, s, ask, past, o)
 	if err != nil {
 		return nil, err
 	}
@@ -127,7 +132,7 @@ const besides = "-interrupted"
 
 // solve runs the optimiser. Only the caller's context, not the time limit,
 // makes it fail.
-func solve(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*model.Outcome, error) {
+func solve(ctx context.Context, s *Survey, ask PlanAsk, past *scheduler.Past, o Options) (*model.Outcome, error) {
 	limited, cancel := ctx, context.CancelFunc(func() {})
 	if ask.TimeLimit > 0 {
 		limited, cancel = context.WithTimeout(ctx, ask.TimeLimit)
@@ -144,7 +149,7 @@ func solve(ctx context.Context, s *Survey, ask PlanAsk, o Options) (*model.Outco
 	if ask.Seed != nil {
 		seed = *ask.Seed
 	}
-	in := scheduler.Input{Survey: s.Survey, Sky: s.Sky, Calendar: s.Calendar, Windows: s.Windows, Workers: o.Workers}
+	in := scheduler.Input{Survey: s.Survey, Sky: s.Sky, Calendar: s.Calendar, Windows: s.Windows, Workers: o.Workers, Past: past}
 	params := scheduler.Params{Effort: ask.Effort, Seed: seed, Progress: o.Progress, Prices: prices}
 	var out *model.Outcome
 	var err error
