@@ -46,7 +46,7 @@ func TestFieldAndDemandRows(t *testing.T) {
 	n2, b := f.firstFit(t, field, 0, 0, a+22*3600, 60) // beyond gap.max of 20 h
 	n3, c := f.firstFit(t, field, 1, 0, b+600, 90)
 	one := f.visit(field, 0, 0, n1, a, 0)[0]
-	one.State = model.Done
+	one.State, one.Quality = model.Done, 0.625 // the ledger's word counts
 	pt := planned(t, f, one, f.visit(field, 0, 0, n2, b, 0)[0], f.visit(field, 1, 0, n3, c, 0)[0])
 	r := fieldNamed(pt, f.sv.Fields[field].Name)
 	if r.VisitsWanted != 3 || r.VisitsDone != 1 || r.VisitsPlanned != 2 || r.LimitedBy != LimitNothing || r.Bonus != f.sv.FinishBonus {
