@@ -140,10 +140,13 @@ type Estimate struct {
 	Highlighted bool
 }
 
+// The sides of the plot of estimates, px.
+const estLeft, estRight = 230.0, 690.0
+
 // Estimates draws values with their intervals, one below the other, on one
 // axis; zero, where it is in sight, is marked.
 func Estimates(name, title, unit string, all []Estimate) *Canvas {
-	c := New(name, title, 1000, 92+30*float64(len(all)))
+	c := New(name, title, 1000, 62+30*float64(len(all)))
 	lo, hi := math.Inf(1), math.Inf(-1)
 	for _, e := range all {
 		lo, hi = min(lo, e.Low, e.Value), max(hi, e.High, e.Value)
@@ -155,10 +158,10 @@ func Estimates(name, title, unit string, all []Estimate) *Canvas {
 		lo, hi = lo-0.5, hi+0.5
 	}
 	pad := (hi - lo) * 0.06
-	s := scale{lo - pad, hi + pad, 280, 760}
+	s := scale{lo - pad, hi + pad, estLeft, estRight}
 	h := 30 * float64(len(all))
-	c.Text(280, 22, unit, Type{Size: 12, Bold: true})
-	c.Rect(280, 34, 480, h, Style{Fill: Panel})
+	c.Text(estLeft, 22, unit, Type{Size: 12, Bold: true})
+	c.Rect(estLeft, 34, estRight-estLeft, h, Style{Fill: Panel})
 	marks, decimals := nice(s.from, s.to, 6)
 	for _, m := range marks {
 		style := Style{Stroke: Grid, Width: 1}
@@ -176,8 +179,8 @@ func Estimates(name, title, unit string, all []Estimate) *Canvas {
 		}
 		c.Line(Style{Stroke: ink, Width: 2.5}, Point{s.px(e.Low), y}, Point{s.px(e.High), y})
 		c.Circle(s.px(e.Value), y, 5, Style{Fill: ink, Stroke: Paper, Width: 1})
-		c.Text(268, y+4, Clip(e.Label, 38), Type{Anchor: End, Bold: e.Highlighted})
-		c.Text(772, y+4, Clip(e.Note, 40), Type{Ink: Soft})
+		c.Text(estLeft-12, y+4, Clip(e.Label, 32), Type{Anchor: End, Bold: e.Highlighted})
+		c.Text(estRight+12, y+4, Clip(e.Note, 46), Type{Ink: Soft})
 	}
 	c.Alt = title + "."
 	for _, e := range all {

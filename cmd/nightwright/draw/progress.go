@@ -59,7 +59,7 @@ func Progress(name, title string, p Course) *Canvas {
 		c.Line(Style{Stroke: Series4, Width: 2}, mid...)
 	}
 	c.Line(Style{Stroke: Text, Width: 1.5, Dash: "6 4"}, Point{70, s.px(p.Ceiling)}, Point{970, s.px(p.Ceiling)})
-	c.Text(966, s.px(p.Ceiling)-6, "ceiling "+Number(p.Ceiling, 4), Type{Size: 12, Anchor: End})
+	c.Text(78, s.px(p.Ceiling)+15, "ceiling "+Number(p.Ceiling, 4), Type{Size: 12})
 	c.Line(Style{Stroke: Accent, Width: 3}, along(x, s, p.Planned)...)
 	c.Line(Style{Stroke: Series2, Width: 3}, along(x, s, p.Done)...)
 	if p.Now > p.From && p.Now < p.To {
@@ -69,7 +69,7 @@ func Progress(name, title string, p Course) *Canvas {
 	end := 0.0
 	if n := len(p.Planned); n > 0 {
 		end = p.Planned[n-1].Value
-		c.Text(966, s.px(end)+18, "plan "+Number(end, 4), Type{Size: 12, Ink: Accent, Anchor: End, Bold: true})
+		c.Text(966, s.px(end)-9, "plan "+Number(end, 4), Type{Size: 12, Ink: Accent, Anchor: End, Bold: true})
 	}
 	c.Alt = fmt.Sprintf("Coverage against time: the plan rises to %s, under a ceiling of %s.", Number(end, 4), Number(p.Ceiling, 4))
 	if n := len(p.Done); n > 0 {

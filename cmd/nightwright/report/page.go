@@ -32,6 +32,8 @@ type page struct {
 	Forecast            []string
 	Chances             [][]string
 	NetworkRows         [][]string
+	NetworkLead         string
+	Ways, Worths        [][]string
 	Origin              []fact
 	Files               [][]string
 	Night               string
@@ -222,20 +224,46 @@ func (m *page) origin(in *Input) {
 
 // outside fills in what other jobs found out.
 func (m *page) outside(in *Input) {
-	if f := in.Forecast; f != nil {
-		m.Forecast = append(m.Forecast, fmt.Sprintf("Over %s simulated seasons of weather the plan, with re-planning, reaches a coverage of %s on average; nine seasons of ten lie between %s and %s. On clear nights alone it promises %s.",
-			whole(int64(f.Seasons)), decimals4(f.Mean), decimals4(f.Low), decimals4(f.High), decimals4(f.Promised)))
-		if f.FieldsForecastable > 0 {
-			m.Forecast = append(m.Forecast, fmt.Sprintf("%s of %s fields finish in at least half of the seasons.", whole(int64(f.FieldsLikely)), whole(int64(f.FieldsForecastable))))
+	if f := in.Forecast; f != nil && len(f.Ways) > 0 {
+		best := &f.Ways[0]
+		m.Forecast = append(m.Forecast, fmt.Sprintf("On clear nights the plan promises %s. Over %s simulated seasons of weather the best way of acting, %s, reaches %s on average; nine seasons of ten lie between %s and %s.",
+			decimals4(f.Promised), whole(int64(f.Seasons)), best.Name, decimals4(best.Mean), decimals4(best.P05), decimals4(best.P95)))
+		m.Forecast = append(m.Forecast, fmt.Sprintf("%s of %s fields finish in at least half of the seasons.", whole(int64(f.Likely)), whole(int64(len(f.Finish)))))
+		for i := range f.Ways {
+			w := &f.Ways[i]
+			m.Ways = append(m.Ways, []string{w.Name, decimals4(w.Mean), decimals4(w.Low) + " to " + decimals4(w.High), decimals4(w.P05), decimals4(w.P95), hours(w.FieldsFinished)})
 		}
-		for k, c := range f.Finish {
-			if k == 20 {
-				break
-			}
-			m.Chances = append(m.Chances, []string{c.Field, percent(c.Chance, 0)})
-		}
+		m.Chances = chances(f.Finish)
 	}
 	for _, n := range in.Networks {
 		m.NetworkRows = append(m.NetworkRows, []string{n.Name, n.Sites, decimals4(n.Mean), decimals4(n.Low) + " to " + decimals4(n.High), n.Note})
 	}
+	if len(in.Networks) > 0 {
+		m.NetworkLead = fmt.Sprintf("Each network acts under the same %s simulated seasons, so that differences are the networks' own.", whole(int64(in.Seasons)))
+	}
+	for _, w := range in.Worths {
+		m.Worths = append(m.Worths, []string{w.Site, decimals4(w.Alone), decimals4(w.Adds), decimals4(w.AddsLow) + " to " + decimals4(w.AddsHigh), decimals4(w.Share), decimals4(w.ShareLow) + " to " + decimals4(w.ShareHigh)})
+	}
+}
+
+// chances counts fields by their chance to finish.
+func chances(all []ChanceRow) [][]string {
+	bands := []struct {
+		from float64
+		text string
+		n    int64
+	}{{0.95, "95 % or more", 0}, {0.5, "50 to 95 %", 0}, {0.05, "5 to 50 %", 0}, {math.Inf(-1), "under 5 %", 0}}
+	for _, c := range all {
+		for k := range bands {
+			if c.Chance >= bands[k].from {
+				bands[k].n++
+				break
+			}
+		}
+	}
+	var out [][]string
+	for _, b := range bands {
+		out = append(out, []string{b.text, whole(b.n)})
+	}
+	return out
 }

@@ -23,18 +23,27 @@ type Input struct {
 	PlanSum  string // SHA-256 of plan.json
 	Forecast *Forecast
 	Networks []Network
+	Worths   []Worth
+	Seasons  int // that the networks were compared over
 	Workers  int
 }
 
 // Forecast is what simulated seasons make of the plan.
 type Forecast struct {
-	Seasons            int
-	Mean, Low, High    float64     // coverage: mean, and the range that holds nine seasons of ten
-	Band               *draw.Band  // coverage over time; nil when it isn't known
-	Promised           float64     // what the plan promises on clear nights
-	Finish             []ChanceRow // chance that a field finishes, the least first
-	FieldsLikely       int         // that finish in at least half the seasons
-	FieldsForecastable int
+	Seasons  int
+	Ways     []Way // of acting, the best first
+	Band     *draw.Band
+	Finish   []ChanceRow // chance that a field finishes under the best way, the least first
+	Likely   int         // fields that finish in at least half of the seasons
+	Promised float64     // what the plan promises on clear nights
+}
+
+// Way is how a way of acting does in simulated seasons.
+type Way struct {
+	Name            string
+	Mean, Low, High float64 // coverage: mean with its 95 % interval
+	P05, P95        float64 // between which nine seasons of ten lie
+	FieldsFinished  float64
 }
 
 // ChanceRow is a field's chance to get all its visits.
@@ -47,9 +56,17 @@ type ChanceRow struct {
 type Network struct {
 	Name            string
 	Sites           string
-	Mean, Low, High float64 // coverage
+	Mean, Low, High float64 // coverage with its 95 % interval
 	Note            string
 	Base            bool // the network that others are compared with
+}
+
+// Worth is what a site adds to a network.
+type Worth struct {
+	Site                string
+	Alone, Adds, Share  float64 // coverage
+	AddsLow, AddsHigh   float64
+	ShareLow, ShareHigh float64
 }
 
 // Report is a finished report.

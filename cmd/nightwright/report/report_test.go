@@ -202,7 +202,8 @@ const nasty = `<b onclick='x'>&"`
 func TestHostileNames(t *testing.T) {
 	m := small(t, "Small Lantern", `"Small `+strings.ReplaceAll(nasty, `"`, `\"`)+`"`)
 	m.Networks = []Network{{Name: nasty, Sites: nasty, Mean: 0.5, Low: 0.4, High: 0.6, Note: nasty, Base: true}, {Name: "two", Mean: 0.6, Low: 0.55, High: 0.7}}
-	m.Forecast = &Forecast{Seasons: 100, Mean: 0.4, Low: 0.3, High: 0.5, Promised: 0.6, Finish: []ChanceRow{{nasty, 0.25}}, FieldsLikely: 3, FieldsForecastable: 8}
+	m.Forecast = &Forecast{Seasons: 100, Ways: []Way{{Name: nasty, Mean: 0.4, Low: 0.39, High: 0.41, P05: 0.3, P95: 0.5}}, Promised: 0.6, Finish: []ChanceRow{{nasty, 0.25}, {"b", 0.97}}, Likely: 3}
+	m.Worths = []Worth{{Site: nasty, Alone: 0.2, Adds: 0.1, Share: 0.15}}
 	for i := range m.Tables.Fields {
 		m.Tables.Fields[i].LimitedBy = nasty
 	}
@@ -213,7 +214,7 @@ func TestHostileNames(t *testing.T) {
 	if bytes.Contains(page, []byte("<b ")) {
 		t.Error("a name became markup")
 	}
-	for _, want := range []string{"Networks compared", "Over 100 simulated seasons", "25 %"} {
+	for _, want := range []string{"Networks compared", "Over 100 simulated seasons", "What each site is worth", "5 to 50 %</td><td class=\"n\">1<"} {
 		if !bytes.Contains(page, []byte(want)) {
 			t.Errorf("the page lacks %q", want)
 		}

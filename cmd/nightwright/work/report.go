@@ -19,6 +19,11 @@ type ReportAsk struct {
 	Out      string // the page; "": beside the plan folder, its name with -report.html
 	Pictures string // folder for each picture as SVG and PNG; "": none
 	Night    string // the night that is drawn; "": the one whose hours are worth most
+	Forecast string // folder of a forecast of this plan; "": none
+	Compare  string // folder of a comparison of networks; "": none
+	// Beside looks for folders forecast and comparison beside the plan when
+	// none was named; those that aren't of this plan are left out.
+	Beside bool
 }
 
 // ReportResult says what was written.
@@ -26,6 +31,9 @@ type ReportResult struct {
 	Page     string   `json:"report"`
 	Bytes    int      `json:"bytes"`
 	Pictures []string `json:"pictures"`
+	Forecast string   `json:"forecast"` // folders that were used; "": none
+	Compare  string   `json:"comparison"`
+	LeftOut  []string `json:"left_out"` // what stood beside the plan and isn't of it
 }
 
 // pictureScale is how many dots of a PNG stand for a pixel of its picture.
@@ -47,7 +55,13 @@ func Report(ctx context.Context, dir string, ask ReportAsk, o Options) (*ReportR
 	if info, err := os.Stat(ask.Out); err == nil && info.IsDir() {
 		return nil, Inputf("the report can't go to %s: it is a folder; want a file name", ask.Out)
 	}
-	return s.report(ctx, pt, ask, o)
+	left := nearby(dir, &ask, s, pt)
+	r, err := s.report(ctx, pt, ask, o)
+	if err != nil {
+		return nil, err
+	}
+	r.Forecast, r.Compare, r.LeftOut = ask.Forecast, ask.Compare, left
+	return r, nil
 }
 
 // reportFile is where the report of a plan folder goes unless told otherwise.
@@ -87,9 +101,20 @@ func (s *Survey) reportPage(ctx context.Context, pt *tables.PlanTables, ask Repo
 	if err != nil {
 		return nil, nil, err
 	}
-	r, err := report.Build(ctx, report.Input{
+	in := report.Input{
 		Tables: pt, Survey: s.Survey, Exact: s.Exact, Calendar: s.Calendar, Night: ask.Night, PlanSum: sum, Workers: o.Workers,
-	})
+	}
+	if ask.Forecast != "" {
+		if in.Forecast, err = s.forecastOf(ask.Forecast, pt); err != nil {
+			return nil, nil, err
+		}
+	}
+	if ask.Compare != "" {
+		if err := s.comparisonOf(ask.Compare, &in); err != nil {
+			return nil, nil, err
+		}
+	}
+	r, err := report.Build(ctx, in)
 	if err != nil {
 		if ctx.Err() != nil {
 			return nil, nil, ctx.Err()
