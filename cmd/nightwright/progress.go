@@ -42,7 +42,7 @@ func (a *app) startProgress() {
 		return
 	}
 	a.progress.out, a.progress.now = a.stderr, time.Now
-	if isTerminal(a.stderr) {
+	if isTerminal(a.stderr) && os.Getenv("TERM") != "dumb" {
 		a.progress.bars = mpb.New(mpb.WithOutput(a.stderr))
 	}
 }

@@ -53,7 +53,7 @@ func (a *app) root() *cobra.Command {
 		Args:          a.unknownCommand,
 		RunE:          func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
 	}
-	root.CompletionOptions.HiddenDefaultCmd = true
+	root.CompletionOptions.DisableDefaultCmd = true // ours has words of its own
 	root.SetHelpCommand(&cobra.Command{Use: "no-help", Hidden: true})
 	root.SetFlagErrorFunc(flagFault)
 	root.SetVersionTemplate("nightwright {{.Version}}\n")
@@ -77,8 +77,12 @@ func (a *app) root() *cobra.Command {
 		a.demoCommand(), a.newCommand(), a.fieldsCommand(), a.checkCommand(), a.almanacCommand(), a.gridCommand(),
 		a.planCommand(), a.replanCommand(), a.auditCommand(), a.sheetCommand(), a.recordCommand(), a.loseCommand(), a.ledgerCommand(), a.reportCommand(), a.exportCommand(), a.serveCommand(),
 		a.weatherCommand(), a.forecastCommand(), a.compareCommand(), a.gatherCommand(),
+		a.completionCommand(), a.manualCommand(),
 	} {
 		root.AddCommand(c)
+	}
+	if err := completeFlags(root); err != nil {
+		panic("a flag's completion was registered twice: " + err.Error())
 	}
 	return root
 }

@@ -24,7 +24,7 @@ type printer struct {
 }
 
 func (a *app) printer() *printer {
-	return &printer{w: bufio.NewWriter(a.stdout), colour: isTerminal(a.stdout) && os.Getenv("NO_COLOR") == ""}
+	return &printer{w: bufio.NewWriter(a.stdout), colour: isTerminal(a.stdout) && os.Getenv("NO_COLOR") == "" && os.Getenv("TERM") != "dumb"}
 }
 
 func (p *printer) line(format string, args ...any) {
