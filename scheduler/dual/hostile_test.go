@@ -155,7 +155,62 @@ func hostiles(t *testing.T) map[string]*hostile {
 	out["fine gap"] = h
 	out["labels"] = labels()
 	out["moonset"] = moonset(t)
+	for _, off := range []float64{0, 77, 149} {
+		out[fmt.Sprint("peak ", off)] = peak(off)
+	}
+	for name, limit := range map[string]func(r *survey.Rules){
+		"altitude":   func(r *survey.Rules) { r.AltitudeMin = 61.3 * deg },
+		"airmass":    func(r *survey.Rules) { r.AirmassMax = 1.13 },
+		"hour angle": func(r *survey.Rules) { r.HourAngleMax = 21.7 * deg },
+	} {
+		out["last second by "+name] = lastSecond(t, limit)
+	}
 	return out
+}
+
+// peak has a field at its highest in the middle of the only exposure that fits,
+// inside a cell of the sky's tables: quality sampled at cell edges misses it.
+func peak(off float64) *hostile {
+	h, m := newHostile()
+	m = math.Floor(m/300)*300 + off
+	h.open(0, m-900, m+900)
+	h.demand(1, 0, 1800)
+	h.field(0, m, 35)
+	h.put(0, 0, 0, 0, 0, us(m-900))
+	return h
+}
+
+// lastSecond has an exposure that ends with the last microsecond in which a
+// rule allows its field, by the judge, and begins with the first of its open time.
+func lastSecond(t *testing.T, limit func(r *survey.Rules)) *hostile {
+	t.Helper()
+	h, m := newHostile()
+	h.demand(1, 0, 400)
+	h.field(0, m, 10)
+	limit(&h.sv.Fields[0].Rules[0])
+	k, err := trial.Build(t.Context(), h.sv, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	lo, hi := us(m), us(m+6*3600)
+	for hi-lo > 1 {
+		h.plan = nil
+		h.put(0, 0, 0, 0, 0, (lo+hi)/2)
+		rep, err := k.Check(t.Context(), h.plan)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if rep.Legal() {
+			lo = (lo + hi) / 2
+		} else {
+			hi = (lo + hi) / 2
+		}
+	}
+	h.plan = nil
+	h.put(0, 0, 0, 0, 0, lo)
+	start := float64(lo) * 1e-6
+	h.open(0, start, start+4000)
+	return h
 }
 
 // labels has two places on either side of the date line whose labels are a
