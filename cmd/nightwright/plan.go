@@ -61,6 +61,10 @@ the mean coverage that any way of acting can have.
 What the ledger has as done is taken as it is and counts; the plan goes on from
 the end of the last exposure there, or from --now.
 
+What lies between ceiling and plan is told in parts: slews, filter changes, idle
+time, moment (better moments of the visits' own nights), and choice: nights and
+fields, and how far the ceiling itself is too high.
+
 The same survey and seed give the same plan, whatever the number of workers.
 Interrupted (Ctrl-C), it has the best plan so far audited and writes it, marked
 in plan.json; where a plan stands already it goes beside it, into a folder with

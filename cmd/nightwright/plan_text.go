@@ -6,6 +6,7 @@ import (
 	"math"
 	"slices"
 	"strconv"
+	"strings"
 
 	"nightwright/cmd/nightwright/work"
 	"nightwright/scheduler/tables"
@@ -24,6 +25,7 @@ func (p *printer) plan(s *work.Survey, r *work.PlanResult) {
 		p.line("  planned for the expected weather, under which no way of acting has a mean")
 		p.line("  coverage above %.4f (expected_ceiling)", m.Expected)
 	}
+	p.gapParts(m)
 	p.line("  visits   %s of %s wanted   fields finished %s of %s",
 		thousands(int(m.VisitsGot)), thousands(int(m.VisitsWanted)), thousands(int(m.FieldsFinished)), thousands(int(m.FieldsWanted)))
 	p.line("  hours    dark %s   open %s   used %s (%s of open)",
@@ -32,6 +34,17 @@ func (p *printer) plan(s *work.Survey, r *work.PlanResult) {
 	p.programs(m)
 	p.telescopes(m, r.Tables.Nights)
 	p.nights(r.Tables.Nights)
+}
+
+// gapParts says what the gap is made of, in its own unit.
+func (p *printer) gapParts(m *tables.Summary) {
+	var parts []string
+	for _, g := range m.GapParts {
+		parts = append(parts, fixed(100*g.Coverage/max(m.Ceiling, 1e-12), 1)+" "+strings.ReplaceAll(g.Name, "_", " "))
+	}
+	if len(parts) > 0 && m.Gap >= 0.0005 {
+		p.line("  of that  %s", strings.Join(parts, ", "))
+	}
 }
 
 func (p *printer) programs(m *tables.Summary) {

@@ -20,6 +20,9 @@ func (b *builder) summary(pt *PlanTables) Summary {
 	for _, c := range b.out.Stats {
 		s.Search = append(s.Search, Counter{c.Name, c.Value})
 	}
+	for _, p := range b.out.Parts {
+		s.GapParts = append(s.GapParts, GapPart{p.Name, p.Worth})
+	}
 	s.Sites = make([]SiteSummary, len(sv.Sites))
 	s.Telescopes = make([]TelescopeSummary, len(sv.Telescopes))
 	nights := sv.Nights()

@@ -33,7 +33,8 @@ type Summary struct {
 	Programs   []ProgramSummary   `json:"programs"`
 	Sites      []SiteSummary      `json:"sites"`
 	Telescopes []TelescopeSummary `json:"telescopes"`
-	Search     []Counter          `json:"search"` // what the search counted
+	GapParts   []GapPart          `json:"gap_parts,omitempty"` // they sum to ceiling - coverage
+	Search     []Counter          `json:"search"`              // what the search counted
 	Files      []FileSum          `json:"survey_files"`
 	Tables     []TableSum         `json:"tables"`
 	// Checksum is the SHA-256 of this file with an empty checksum.
@@ -111,6 +112,14 @@ type TelescopeSummary struct {
 	Site      string `json:"site"`
 	Visits    int64  `json:"visits"`
 	Hours     Hours  `json:"hours"`
+}
+
+// GapPart is one part of what lies between the ceiling and the plan: slews,
+// filter_changes, idle, moment (better moments of the visits' own nights), choice
+// (nights and fields, the search, and how far the ceiling is too high).
+type GapPart struct {
+	Name     string  `json:"name"`
+	Coverage float64 `json:"coverage"`
 }
 
 // Counter is one named count.
