@@ -40,6 +40,7 @@ type trialAskJSON struct {
 // trialJSON is what would change.
 type trialJSON struct {
 	Losses   []markJSON     `json:"losses"`
+	Now      string         `json:"now"` // nothing before it was planned
 	Before   planJSON       `json:"before"`
 	After    planJSON       `json:"after"`
 	Counts   map[string]int `json:"counts"`
@@ -99,19 +100,19 @@ func postTrial(s *Server, w http.ResponseWriter, r *http.Request) error {
 	if !(ask.HoldHours >= 0 && ask.HoldHours <= 24*366) {
 		return wrong("hold_hours must be 0 to 8784")
 	}
-	redo := work.RedoAsk{Now: ask.Now, Hold: time.Duration(ask.HoldHours * float64(time.Hour)), Stability: 0.5}
+	again := work.RedoAsk{Now: ask.Now, Clock: s.cfg.Now(), Hold: time.Duration(ask.HoldHours * float64(time.Hour)), Stability: 0.5}
 	if ask.Stability != nil {
-		if redo.Stability = *ask.Stability; !(redo.Stability >= 0 && redo.Stability <= 1) {
+		if again.Stability = *ask.Stability; !(again.Stability >= 0 && again.Stability <= 1) {
 			return wrong("stability must be 0 to 1")
 		}
 	}
-	if redo.Now != "" {
-		if _, err := work.ParseInstant("now", redo.Now); err != nil {
+	if again.Now != "" {
+		if _, err := work.ParseInstant("now", again.Now); err != nil {
 			return err
 		}
 	}
 	j, err := s.jobs.start("plan again", func(ctx context.Context, tell func(model.Progress)) error {
-		return s.attempt(ctx, v, losses, ask.Losses, redo, tell)
+		return s.attempt(ctx, v, losses, ask.Losses, again, tell)
 	})
 	if err != nil {
 		return err
@@ -153,7 +154,10 @@ func marks(v *view, in []markJSON) ([]work.LoseAsk, error) {
 // attempt plans again and keeps the result to be looked at.
 func (s *Server) attempt(ctx context.Context, v *view, losses []work.LoseAsk, shown []markJSON, redo work.RedoAsk, tell func(model.Progress)) error {
 	o := work.Options{Workers: s.cfg.Workers, Version: s.cfg.Version, Progress: tell}
-	t, err := work.TryLosses(ctx, s.cfg.Survey, work.TrialAsk{Plan: v.planDir, Losses: losses, Redo: redo}, o)
+	if err := v.openWindows(ctx, o); err != nil {
+		return err
+	}
+	t, err := work.TryLosses(ctx, s.cfg.Survey, work.TrialAsk{Plan: v.planDir, Losses: losses, Redo: redo, Like: v.Survey}, o)
 	if err != nil {
 		return err
 	}
@@ -162,7 +166,7 @@ func (s *Server) attempt(ctx context.Context, v *view, losses []work.LoseAsk, sh
 		t.Drop()
 		return err
 	}
-	a := &attempt{trial: t, view: nv, json: trialJSON{Losses: shown, Before: planOf(v), After: planOf(nv), Counts: map[string]int{}, Changes: []changeJSON{}, Checksum: t.After.Summary.Checksum}}
+	a := &attempt{trial: t, view: nv, json: trialJSON{Losses: shown, Now: t.Now, Before: planOf(v), After: planOf(nv), Counts: map[string]int{}, Changes: []changeJSON{}, Checksum: t.After.Summary.Checksum}}
 	for _, c := range t.Changes() {
 		a.json.Counts[c.What]++
 		if c.What == "kept" || c.What == "done" || len(a.json.Changes) >= changesShown {

@@ -23,7 +23,8 @@ type books struct {
 	sheet *work.Survey // with the losses that the plan knew of; nil until a sheet is asked for
 }
 
-// view is a survey with a plan, as they were read; it never changes.
+// view is a survey with a plan, as they were read; but for
+// windows, which are opened late, it never changes.
 type view struct {
 	*work.Survey
 	plan    *tables.PlanTables
@@ -33,6 +34,8 @@ type view struct {
 	fieldID map[string]int
 	nights  [][][]int32 // visits, by telescope and night
 	fields  [][]int32   // visits, by field
+
+	windowsMu sync.Mutex // for the survey's sky and windows, which are opened late
 }
 
 // planDir is where the plan is.
@@ -136,6 +139,14 @@ func newView(s *work.Survey, pt *tables.PlanTables, dir string) (*view, error) {
 		}
 	}
 	return v, nil
+}
+
+// openWindows works out when fields may be observed, once for a view: it takes
+// a while, and only planning again and stories want it.
+func (v *view) openWindows(ctx context.Context, o work.Options) error {
+	v.windowsMu.Lock()
+	defer v.windowsMu.Unlock()
+	return v.OpenWindows(ctx, o)
 }
 
 // night reads a night's label.

@@ -44,8 +44,14 @@ func TestTrial(t *testing.T) {
 		t.Error("throwing away wrote something")
 	}
 
-	d.run(lossOfC1)
+	// Without an instant, and with the clock outside the period, it is all of it.
+	if j := d.run(`{"losses":[{"telescope":"C1","from":"2027-03-09","to":"2027-03-09","cause":"weather"}]}`); j.State != "done" {
+		t.Fatalf("the job: %+v", j)
+	}
 	d.get("/api/trial", &trial)
+	if trial.Now != "2027-03-07T00:00:00Z" {
+		t.Errorf("planned from %s; want the period's begin", trial.Now)
+	}
 	if code, text := d.change("POST", "/api/trial/accept", `{"checksum":"another"}`); code != http.StatusConflict {
 		t.Errorf("another plan's checksum: %d %s", code, text)
 	}

@@ -17,6 +17,7 @@ type Trial struct {
 	Losses []LoseAsk
 	Before *tables.PlanTables
 	After  *tables.PlanTables
+	Now    string // the instant before which nothing was planned
 
 	dir    string // the copy
 	folder string // where the plan stands that it would replace
@@ -29,6 +30,7 @@ type TrialAsk struct {
 	Plan   string // folder of the plan that holds now
 	Losses []LoseAsk
 	Redo   RedoAsk
+	Like   *Survey // of the same files, with its windows open, which are then taken over; nil: none
 }
 
 // TryLosses plans again in a copy of the survey in which the losses are
@@ -65,7 +67,10 @@ func TryLosses(ctx context.Context, survey string, ask TrialAsk, o Options) (_ *
 			return nil, err
 		}
 	}
-	t.After, err = redo(ctx, c, ask.Plan, filepath.Join(t.dir, "plan"), ask.Redo, o)
+	if err := c.takeWindows(ctx, ask.Like, o); err != nil {
+		return nil, err
+	}
+	t.After, t.Now, err = redo(ctx, c, ask.Plan, filepath.Join(t.dir, "plan"), ask.Redo, o)
 	if err != nil {
 		return nil, err
 	}
@@ -79,6 +84,22 @@ func TryLosses(ctx context.Context, survey string, ask TrialAsk, o Options) (_ *
 	}
 	t.After.Summary = *sum
 	return t, nil
+}
+
+// takeWindows takes the windows of the same survey over: lost time is no part
+// of them.
+func (s *Survey) takeWindows(ctx context.Context, like *Survey, o Options) error {
+	if like == nil || like.Windows == nil || like.sum() != s.sum() {
+		return nil
+	}
+	if _, err := s.TakeLosses(ctx, ledger.Now); err != nil {
+		return err
+	}
+	if err := s.OpenCalendar(ctx, o); err != nil {
+		return err
+	}
+	s.Sky, s.Windows = like.Sky, like.Windows.On(s.Calendar)
+	return nil
 }
 
 // copySurvey copies the survey's files and its ledger.
@@ -182,16 +203,38 @@ func (s *Survey) lastEntry(ctx context.Context) (int64, error) {
 
 // RedoAsk says how to plan again.
 type RedoAsk struct {
-	Now       string        // instant before which nothing is planned
+	Now       string        // instant before which nothing is planned; "": see Clock
+	Clock     time.Time     // the present; it counts where it lies in the survey's period
 	Hold      time.Duration // what starts so soon after is kept
 	Stability float64       // 0 to 1: how dear moving a visit is
 }
 
-// redo plans a survey again from its ledger.
-func redo(ctx context.Context, s *Survey, _, out string, _ RedoAsk, o Options) (*tables.PlanTables, error) {
-	r, err := Plan(ctx, s, PlanAsk{Out: out, Effort: "quick"}, o)
+// redo plans the rest of a survey again from its ledger and a plan.
+func redo(ctx context.Context, s *Survey, plan, out string, ask RedoAsk, o Options) (*tables.PlanTables, string, error) {
+	now, err := s.redoNow(ctx, ask)
 	if err != nil {
-		return nil, err
+		return nil, "", err
 	}
-	return r.Tables, nil
+	r, err := Replan(ctx, s, ReplanAsk{Plan: plan, Now: now, Hold: ask.Hold, Stability: ask.Stability, Out: out}, o)
+	if err != nil {
+		return nil, "", err
+	}
+	return r.Tables, now, nil
+}
+
+// redoNow is the instant asked for; else the clock's, in the survey's period;
+// else where the ledger ends, or the period begins.
+func (s *Survey) redoNow(ctx context.Context, ask RedoAsk) (string, error) {
+	if ask.Now != "" {
+		return ask.Now, nil
+	}
+	h, err := s.history(ctx, ledger.Now)
+	if err != nil {
+		return "", err
+	}
+	from, to := int64((s.FirstNight-1).Unix()*1e6), int64((s.LastNight+1).Unix()*1e6)
+	if clock := ask.Clock.Unix() * 1e6; clock > from && clock < to {
+		from = clock
+	}
+	return tables.Instant(max(h.Last, from)), nil
 }

@@ -46,12 +46,11 @@ export class Redo {
       `${m.telescope ?? "all of " + m.site}, ${stamp(m.from)} to ${stamp(m.to)} `,
       el("select", { "aria-label": "cause", onchange: (e) => { m.cause = e.target.value; } }, ...d.survey.causes.map((c) => el("option", { selected: c === m.cause }, c))), " ",
       el("button", { type: "button", "aria-label": `take the mark ${k + 1} away`, onclick: () => { d.marks.splice(k, 1); this.list(); this.on.marks(); } }, "take away"))));
-    one("redo-now").placeholder = d.marks.length ? stamp(Math.min(...d.marks.map((m) => m.from))) : "the first mark";
   }
 
   async start() {
     const d = this.desk, typed = one("redo-now").value.trim();
-    const now = typed ? instant(typed) : d.marks.length ? Math.min(...d.marks.map((m) => m.from)) : null;
+    const now = typed ? instant(typed) : null;
     if (typed && now === null) { this.on.say("The instant wants UTC, such as 2027-03-09T02:00Z."); return; }
     const ask = {
       losses: d.marks.map((m) => ({ telescope: m.telescope, site: m.site, from: full(m.from), to: full(m.to), cause: m.cause, why: m.why || undefined })),
@@ -90,7 +89,7 @@ export class Redo {
       ["hours used", fixed(b.used_hours, 1), fixed(a.used_hours, 1), by(a.used_hours - b.used_hours, 1)],
     ], [1, 2, 3]));
     const words = ["kept", "moved", "dropped", "new", "lost", "done"].filter((w) => t.counts[w]).map((w) => `${many(t.counts[w])} ${w}`);
-    one("trial-counts").textContent = `Exposures: ${words.join(", ")}. ${t.losses.length} mark${t.losses.length === 1 ? "" : "s"} of lost time.`;
+    one("trial-counts").textContent = `Exposures: ${words.join(", ")}. ${t.losses.length} mark${t.losses.length === 1 ? "" : "s"} of lost time. Planned from ${t.now} on; what the ledger doesn't tell of before that counts as not taken.`;
     const at = (name, start) => (name ? `${name} ${stamp(start).slice(0, 10)} ${clock(start)}` : "");
     one("trial-changes").replaceChildren(...table(["field", "what", "from", "to"], t.changes.slice(0, 200).map((c) => [c.field, c.what, at(c.from_telescope, c.from_start), at(c.to_telescope, c.to_start)])));
   }
