@@ -1,6 +1,10 @@
 package main
 
 import (
+	"bytes"
+	"encoding/json"
+	"strings"
+
 	"github.com/spf13/cobra"
 
 	"nightwright/cmd/nightwright/work"
@@ -59,17 +63,30 @@ best site K times and tells how far from the best set that may be.`,
 	return c
 }
 
-// compareResult is a comparison for scripts.
+// compareResult is a comparison for scripts: the tables' rows by their columns.
 type compareResult struct {
 	seasons.CompareSummary
-	Networks  []tables.NetworkRow  `json:"networks"`
-	Pairs     []tables.PairRow     `json:"pairs"`
-	Worths    []tables.WorthRow    `json:"sites"`
-	Strengths []tables.StrengthRow `json:"strengths"`
+	Networks  json.RawMessage `json:"networks"`
+	Pairs     json.RawMessage `json:"pairs"`
+	Worths    json.RawMessage `json:"sites"`
+	Strengths json.RawMessage `json:"strengths"`
 }
 
 func compareJSON(t *seasons.CompareTables) compareResult {
-	return compareResult{t.Summary, t.Networks, t.Pairs, t.Worths, t.Strengths}
+	return compareResult{
+		t.Summary, jsonRows(tables.Networks, t.Networks), jsonRows(tables.Pairs, t.Pairs),
+		jsonRows(tables.Worths, t.Worths), jsonRows(tables.Strengths, t.Strengths),
+	}
+}
+
+// jsonRows is a table as JSON. A buffer takes all that is written, so that
+// there is no error to tell.
+func jsonRows[T any](t tables.Table[T], rows []T) json.RawMessage {
+	var b bytes.Buffer
+	if err := work.WriteJSONRows(&b, t, rows); err != nil {
+		return json.RawMessage("null")
+	}
+	return b.Bytes()
 }
 
 // greed tells how a network was chosen step by step.
@@ -93,20 +110,20 @@ func (p *printer) compare(r *work.SeasonsResult) {
 	if len(t.Networks) == 0 {
 		return
 	}
-	p.head("Networks (difference from %s, with its 95 %% interval)", clip(t.Networks[0].Network, 24))
-	l := newList("<network", "coverage", "difference", "interval", "best", "cost", "per cost")
+	p.head("Networks (difference from %s; best: how often none gets more)", clip(t.Networks[0].Network, 20))
+	l := newList("<network", "coverage", "difference", "+- 95 %", "best", "cost", "per cost")
 	for _, n := range t.Networks {
 		diff, interval := "-", "-"
 		if n.Order > 1 {
-			diff, interval = signed(n.Difference), signed(n.DifferenceLow)+" "+signed(n.DifferenceHigh)
+			diff, interval = signed(n.Difference), fixed((n.DifferenceHigh-n.DifferenceLow)/2, 4)
 		}
-		l.add(clip(n.Network, 24), fixed(n.Coverage, 4), diff, interval, percent(n.BestChance, 1), fixed(n.Cost, 2), fixed(n.PerCost, 4))
+		l.add(clip(n.Network, 22), fixed(n.Coverage, 4), diff, interval, percent(n.BestChance, 1), fixed(n.Cost, 2), fixed(n.PerCost, 4))
 	}
 	p.table(l)
-	p.head("Round the clock, and with one site down for a month")
-	l = newList("<network", "longest dark gap", "a site is open", "left", "<when down")
+	p.head("Longest dark gap round the clock; what is left with a site down for a month")
+	l = newList("<network", "dark gap", "a site open", "left", "<when down")
 	for _, n := range t.Networks {
-		l.add(clip(n.Network, 24), hours(n.DarkGap)+" h", percent(n.Round, 1), percent(n.Redundancy, 1), clip(n.WorstDown, 18))
+		l.add(clip(n.Network, 22), hours(n.DarkGap)+" h", percent(n.Round, 1), percent(n.Redundancy, 1), clip(n.WorstDown, 14))
 	}
 	p.table(l)
 	p.worths(t)
@@ -127,13 +144,13 @@ func (p *printer) worths(t *seasons.CompareTables) {
 		return
 	}
 	p.head("Sites (adds: coverage that all others lack; share: Shapley, %s)", t.Summary.Shapley)
-	l := newList("<site", "alone", "adds", "share", "cost", "share per cost", "<best at")
+	l := newList("<site", "alone", "adds", "share", "per cost", "<best at")
 	for _, w := range t.Worths {
 		share, per := fixed(w.Shapley, 4), fixed(w.ShapleyPerCost, 4)
 		if t.Summary.Shapley == "none" {
 			share, per = "-", "-"
 		}
-		l.add(clip(w.Site, 18), fixed(w.Alone, 4), fixed(w.Marginal, 4), share, fixed(w.Cost, 2), per, bestAt(t.Strengths, w.Site))
+		l.add(clip(w.Site, 16), fixed(w.Alone, 4), fixed(w.Marginal, 4), share, per, bestAt(t.Strengths, w.Site))
 	}
 	p.table(l)
 }
@@ -166,5 +183,5 @@ func bestAt(rows []tables.StrengthRow, site string) string {
 	if len(out) == 0 {
 		return "-"
 	}
-	return enumerate(out)
+	return strings.Join(out, ", ")
 }

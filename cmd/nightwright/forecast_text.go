@@ -39,8 +39,8 @@ func (p *printer) forecast(r *work.SeasonsResult, plan *tables.Summary) {
 	} else {
 		p.line("%s of weather", count(f.Summary.Seasons, "season"))
 	}
-	p.head("Coverage by way of acting (mean, its 95 %% interval, one season in twenty below)")
-	l := newList("<policy", "mean", "interval", "1 in 20 below", "fields finished", "lost h", "used h", "wasted h")
+	p.head("Coverage by way of acting (1 in 20: what one season in twenty falls below)")
+	l := newList("<policy", "mean", "95 % interval", "1 in 20", "finished", "lost h", "used h", "wasted h")
 	for _, s := range f.Summary.Policies {
 		l.add(s.Policy, fixed(s.Coverage.Mean, 4), span(s.Coverage, 4), fixed(s.P05, 4), fixed(s.FieldsFinished.Mean, 1),
 			hours(s.LostHours.Mean), hours(s.UsedHours), hours(s.WastedHours))

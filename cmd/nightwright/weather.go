@@ -52,7 +52,9 @@ func (p *printer) weather(name string, f *weather.Fit) {
 	day := func(at int64) string { return time.Unix(at, 0).UTC().Format(time.DateOnly) }
 	p.line("%s: %s from %s to %s, %s, %s without a value", p.bold(name), count(f.Rows, "row"), day(f.From), day(f.To), count(f.Gaps, "gap"), thousands(f.Missing))
 	p.line("")
-	p.line("  %s", survey(f))
+	for _, l := range survey(f) {
+		p.line("    %s", l)
+	}
 	p.head("Rows (a row is %s)", duration(f.Step))
 	p.line("  open %s; after an open row %s, after a closed one %s: r %.3f", percent(f.Mean, 1), percent(f.OpenOpen, 1), percent(f.ClosedOpen, 1), f.Lag1)
 	l := newList("<runs", "count", "mean", "of the chain", "longest")
@@ -71,14 +73,18 @@ func (p *printer) weather(name string, f *weather.Fit) {
 	}
 }
 
-// survey writes the fit as a line of a survey file.
-func survey(f *weather.Fit) string {
+// survey writes the fit as lines of a survey file.
+func survey(f *weather.Fit) []string {
 	var months []string
 	for _, m := range f.Months {
 		months = append(months, fixed(m, 2))
 	}
-	hours := math.Max(1, math.Round(f.Persistence/3600))
-	return fmt.Sprintf("weather: {clear: [%s],\n            persistence: %.0fh}", strings.Join(months, ", "), hours)
+	return []string{
+		"weather:",
+		"  clear: [" + strings.Join(months[:6], ", ") + ",",
+		"          " + strings.Join(months[6:], ", ") + "]",
+		fmt.Sprintf("  persistence: %.0fh", math.Max(1, math.Round(f.Persistence/3600))),
+	}
 }
 
 func duration(s float64) string {
@@ -104,7 +110,7 @@ func verdict(f *weather.Fit) []string {
 		out = append(out, "From row to row nothing is remembered once the months are known.")
 	}
 	switch {
-	case math.IsNaN(f.RunChi2P) || f.RunClasses == 0:
+	case f.RunChi2P < 0:
 		out = append(out, "There are too few runs to judge their lengths.")
 	case f.RunChi2P < 0.01:
 		out = append(out, fmt.Sprintf("Open runs are not geometric (chi-square %.1f in %d classes, chance %.4f).", f.RunChi2, f.RunClasses, f.RunChi2P))
@@ -120,7 +126,10 @@ func verdict(f *weather.Fit) []string {
 			thin = append(thin, time.Month(m+1).String())
 		}
 	}
-	if len(thin) > 0 {
+	switch n := len(thin); {
+	case n > 3:
+		out = append(out, fmt.Sprintf("%d months have no row: they are taken from those about.", n))
+	case n > 0:
 		out = append(out, "No row is in "+enumerate(thin)+": taken from the months about.")
 	}
 	return out

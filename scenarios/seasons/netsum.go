@@ -198,6 +198,9 @@ func (out *CompareTables) worths(b *board) {
 // shares returns each site's Shapley share with its interval, or nil.
 func (out *CompareTables) shares(b *board, all string, list []string, value func(uint64) []float64) []Interval {
 	n, seasons := len(list), len(b.seasons)
+	if b.first(all, whatShapley, "") == 0 {
+		return nil
+	}
 	if orders := b.items(all, whatOrder); len(orders) > 0 {
 		out.Summary.Shapley = "sampled"
 		return sampledShares(orders, list, value)

@@ -28,7 +28,7 @@ const (
 	whatSite    = "site_cost"  // item: site
 	whatDark    = "dark_gap_h" // of a network
 	whatRound   = "round"      // of a network
-	whatOrders  = "orders"     // how many orders of sites Shapley shares are sampled from; 0: all
+	whatShapley = "shapley"    // 1: shares are wanted
 	whatOrder   = "order"      // item: number and sites of one order
 	castNetwork = "network "   // before a network's name
 	castSites   = "sites "     // before a coalition, its sites in the survey's order
@@ -200,6 +200,9 @@ func (st *Stage) constants(pw *partWriter, ask *CompareAsk, orders [][]int) {
 	}
 	for i := range sv.Sites {
 		pw.add(always, castSites+names(sv, uint64(1)<<len(sv.Sites)-1), whatSite, sv.Sites[i].Name, sv.Sites[i].Cost)
+	}
+	if ask.Shapley {
+		pw.add(always, castSites+names(sv, uint64(1)<<len(sv.Sites)-1), whatShapley, "", 1)
 	}
 	for k, o := range orders {
 		var list []string

@@ -8,47 +8,52 @@ import (
 
 // Fit is what a record says of a site's weather.
 type Fit struct {
-	Rows, Gaps, Missing int
-	Step                float64 // s
-	From, To            int64   // UTC, Unix s, of the first and last row
+	Rows    int     `json:"rows"`
+	Gaps    int     `json:"gaps"`
+	Missing int     `json:"missing"`
+	Step    float64 `json:"step_s"`
+	From    int64   `json:"from_unix_s"` // UTC, of the first row
+	To      int64   `json:"to_unix_s"`
 
-	Mean      float64     // open share of all rows
-	Months    [12]float64 // open share by month; where there are no rows, between the neighbours
-	MonthRows [12]int
+	Mean      float64     `json:"clear_mean"`     // open share of all rows
+	Months    [12]float64 `json:"clear_by_month"` // open share by month; where there are no rows, between the neighbours
+	MonthRows [12]int     `json:"rows_by_month"`
 
-	OpenOpen   float64 // P(open | the row before was open)
-	ClosedOpen float64 // P(open | the row before was closed)
-	Lag1       float64 // OpenOpen - ClosedOpen, the chain's r
+	OpenOpen   float64 `json:"open_after_open"`   // P(open | the row before was open)
+	ClosedOpen float64 `json:"open_after_closed"` // P(open | the row before was closed)
+	Lag1       float64 `json:"lag1"`              // OpenOpen - ClosedOpen, the chain's r
 
 	// Season is the correlation of neighbours about their months' means: what
 	// is left of r when the months take their part. The persistence goes with it.
-	Season      float64
-	Persistence float64 // s
+	Season      float64 `json:"lag1_about_months"`
+	Persistence float64 `json:"persistence_s"` // s
 
-	OpenRuns, ClosedRuns         Runs
-	Lags                         []Lag
-	SlowDecay                    bool    // the record remembers longer than the chain, beyond chance
-	RunChi2, RunChi2P            float64 // open runs against geometric ones; P: the chance of a worse fit
-	RunClasses                   int
-	HourlyPersistenceFromDailies bool // steps of half a day or more: hours are extrapolated
+	OpenRuns                     Runs    `json:"open_runs"`
+	ClosedRuns                   Runs    `json:"closed_runs"`
+	Lags                         []Lag   `json:"lags"`
+	SlowDecay                    bool    `json:"slow_decay"`      // the record remembers longer than the chain, beyond chance
+	RunChi2                      float64 `json:"run_chi2"`        // open runs against geometric ones
+	RunChi2P                     float64 `json:"run_chi2_chance"` // of a worse fit; -1: too few runs to say
+	RunClasses                   int     `json:"run_classes"`
+	HourlyPersistenceFromDailies bool    `json:"daily_rows"` // steps of half a day or more: hours are extrapolated
 }
 
 // Runs describes the runs of one state. Runs that touch a gap or an end of the
 // record aren't whole and don't count.
 type Runs struct {
-	Count     int
-	Mean      float64 // rows
-	Longest   int
-	Geometric float64 // mean of the chain, 1/(1 - P(stay))
+	Count     int     `json:"count"`
+	Mean      float64 `json:"mean"` // rows
+	Longest   int     `json:"longest"`
+	Geometric float64 `json:"mean_of_chain"` // mean of the chain, 1/(1 - P(stay))
 }
 
 // Lag is the autocorrelation at a distance of K rows.
 type Lag struct {
-	K      int
-	Record float64
-	Chain  float64 // Lag1^K: a chain of one clear fraction
-	Months float64 // a chain with the months' clear fractions and the persistence of Season
-	Pairs  int
+	K      int     `json:"rows"`
+	Record float64 `json:"record"`
+	Chain  float64 `json:"chain"`       // Lag1^K: a chain of one clear fraction
+	Months float64 `json:"with_months"` // a chain with the months' clear fractions and the persistence of Season
+	Pairs  int     `json:"pairs"`
 }
 
 // lagsTold are the distances that are compared.

@@ -1,10 +1,6 @@
 package weather
 
-import (
-	"math"
-
-	"gonum.org/v1/gonum/stat/distuv"
-)
+import "gonum.org/v1/gonum/stat/distuv"
 
 // eachRun calls f with the length in rows of every whole run of a state.
 func eachRun(rec *Record, open bool, f func(length int)) {
@@ -54,6 +50,7 @@ const leastExpected = 5
 // top, one parameter estimated.
 func (f *Fit) testRuns(rec *Record) {
 	n, q := f.OpenRuns.Count, f.OpenOpen
+	f.RunChi2P = -1
 	if n == 0 || q <= 0 || q >= 1 {
 		return
 	}
@@ -74,7 +71,6 @@ func (f *Fit) testRuns(rec *Record) {
 		f.RunChi2 += (got[i] - e) * (got[i] - e) / e
 	}
 	f.RunClasses = len(classes)
-	f.RunChi2P = math.NaN()
 	if k := len(classes) - 2; k > 0 {
 		f.RunChi2P = 1 - distuv.ChiSquared{K: float64(k)}.CDF(f.RunChi2)
 	}
