@@ -35,7 +35,8 @@ func (a *app) seasonsDone(r *work.SeasonsResult, plan *tables.Summary) error {
 func (p *printer) forecast(r *work.SeasonsResult, plan *tables.Summary) {
 	f := r.Forecast
 	if plan != nil {
-		p.line("%s: %s of weather; the plan's own coverage is %.4f, under clear skies", p.bold(plan.Survey), count(f.Summary.Seasons, "season"), plan.Coverage)
+		p.line("%s: %s of weather", p.bold(plan.Survey), count(f.Summary.Seasons, "season"))
+		p.line("  under clear skies the plan has a coverage of %.4f, at most %.4f can be had", plan.Coverage, plan.Ceiling)
 	} else {
 		p.line("%s of weather", count(f.Summary.Seasons, "season"))
 	}

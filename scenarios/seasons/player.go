@@ -86,6 +86,7 @@ type Player struct {
 	scopes   []scope
 	out      *Outcome
 	bins     *binning
+	memory   [][]float64 // by site: the correlation of hours so many apart
 }
 
 // outage shuts one site for a stretch of night labels.
@@ -163,6 +164,13 @@ func newPlayer(st *Stage, policy Policy, active []bool, base *fluid, lists *plan
 		lost: make([]int32, n), next: make([]int32, n), earned: make([]float64, p.Nights), finish: make([]int32, len(p.FieldWant)-1),
 		programs: make([]float64, len(st.Survey.Programs)), pressure: make([]float64, len(st.Survey.Programs)),
 		scopes: make([]scope, len(p.Scopes)), down: outage{site: -1},
+	}
+	for i := range st.climates {
+		row := make([]float64, 25)
+		for k := range row {
+			row[k] = math.Pow(st.climates[i].Keep(), float64(k))
+		}
+		pl.memory = append(pl.memory, row)
 	}
 	return pl
 }

@@ -23,6 +23,7 @@ type Stage struct {
 	hours     int
 	nights    []stageNight // [scope*Nights+night]
 	blocks    int
+	climate   []float64 // [block] the month's clear fraction at its site
 	capacity  []float64 // [block] open s, less what keep_free leaves
 	qualities []uint8   // of options, a byte a block
 	busy      []float64 // [want*scopes+scope] time a visit takes with usual gaps, s; 0: not served
@@ -138,7 +139,7 @@ func (st *Stage) setNights(ctx context.Context, workers int) error {
 		sn.block, sn.blocks = int32(st.blocks), int32(min(last-sn.hour+1, 255))
 		st.blocks += int(sn.blocks)
 	}
-	st.capacity = make([]float64, st.blocks)
+	st.capacity, st.climate = make([]float64, st.blocks), make([]float64, st.blocks)
 	byScope := make([][]int32, len(p.Scopes))
 	for w := range p.Wants {
 		for _, t := range p.Wants[w].Scopes {
@@ -174,6 +175,9 @@ func (st *Stage) fill(t, n int, wants []int32) []uint8 {
 	p := st.p
 	sn := &st.nights[t*p.Nights+n]
 	open := p.Open(t, n)
+	for b := range sn.blocks {
+		st.climate[sn.block+b] = st.climates[p.Scopes[t].Site].Clear[weather.Month(sn.hour+int64(b))]
+	}
 	for _, o := range open {
 		for b := range sn.blocks {
 			from := (sn.hour + int64(b)) * blockTime * model.Micro
