@@ -83,7 +83,7 @@ type replanner struct {
 	old     *Earlier
 	par     ReplanParams
 	base    *model.Problem // of the whole survey
-	p       *model.Problem // less what was done
+	p       *model.Problem // less what was done; what is under way may go on
 	ph      *model.Problem // less what is held too
 	visits  []oldVisit
 	held    []int        // of visits
@@ -233,7 +233,7 @@ func (r *replanner) hold() {
 	q := r.base.Take(given)
 	zero := dual.NewPrices(q)
 	refused := search.New(q, zero, make([]float64, len(q.Wants)), 0).Load(list)
-	g := model.Given{Held: true}
+	g, maybe := model.Given{Held: true}, model.Given{}
 	for i, k := range r.held {
 		v := &r.visits[k]
 		if refused[i] != "" {
@@ -242,9 +242,17 @@ func (r *replanner) hold() {
 		}
 		v.fate = isHeld
 		r.give(&g, v)
+		if r.first(v).Start < r.in.Past.From {
+			last := g.Visits[len(g.Visits)-1]
+			last.Maybe = true
+			maybe.Visits = append(maybe.Visits, last)
+		}
 	}
 	r.held = slices.DeleteFunc(r.held, func(k int) bool { return r.visits[k].fate != isHeld })
 	r.ph = r.p.Take(g)
+	if len(maybe.Visits) > 0 {
+		r.p = r.p.Take(maybe)
+	}
 }
 
 // qualityOver bounds the error of the fast sky's quality.

@@ -85,7 +85,8 @@ func (r *replanner) wasDone(v *oldVisit) bool {
 }
 
 // begun returns the starts, as they were, of the exposures that were done of a
-// visit under way: all of those that have ended by now. nil: it was missed.
+// visit under way: all of those that have ended by now. nil: it was missed, or
+// one of them was so poor that the visit can't count any more.
 func (r *replanner) begun(v *oldVisit) []int64 {
 	out := []int64{}
 	for _, i := range v.exposures {
@@ -95,7 +96,11 @@ func (r *replanner) begun(v *oldVisit) []int64 {
 		if r.doneAs[i] < 0 {
 			return nil
 		}
-		out = append(out, r.in.Past.Exposures[r.doneAs[i]].Start)
+		e := &r.in.Past.Exposures[r.doneAs[i]]
+		if e.Quality < r.base.Wants[v.want].MinQuality {
+			return nil
+		}
+		out = append(out, e.Start)
 	}
 	return out
 }

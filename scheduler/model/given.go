@@ -27,6 +27,9 @@ type GivenVisit struct {
 	Counts        bool    // it earns, and is one of those that are wanted
 	Binds         bool    // gap.min and per_night hold against it
 	Seconds       float64 // scaled exposure time inside the period
+	// Maybe marks one that is under way: a plan may go on with it or not. A
+	// bound then holds for both: it earns, and takes nothing from what is wanted.
+	Maybe bool
 }
 
 // bound is a given visit as cadence sees it.
@@ -52,8 +55,12 @@ func (p *Problem) Take(g Given) *Problem {
 	}
 	for i := range g.Visits {
 		v := &g.Visits[i]
-		q.GivenSeconds[p.Survey.Fields[v.Field].Program] += v.Seconds
 		w := &q.Wants[q.WantOf(v.Field, v.Demand)]
+		if v.Maybe {
+			q.Earned += w.Value*v.Quality + q.bonus[v.Field]
+			continue
+		}
+		q.GivenSeconds[w.Program] += v.Seconds
 		if v.Binds {
 			w.bounds = append(w.bounds, bound{v.Start, v.Night})
 		}
