@@ -109,10 +109,10 @@ func Family(name string, seed uint64) *survey.Survey {
 }
 
 // familyFirstNight is the first night of the families, 2027-03-01;
-// polarFirstNight, 2027-06-15, that of those in the polar night.
+// polarFirstNight, 2027-07-01 before a new Moon, that of those in the polar night.
 const (
 	familyFirstNight survey.Day = 20878
-	polarFirstNight  survey.Day = 20984
+	polarFirstNight  survey.Day = 21000
 )
 
 func (f *family) make(seed uint64) *survey.Survey {

@@ -46,6 +46,9 @@ func (a *ask) nominal(sky *skyline, wi int, w *model.Want, t int32, n int) {
 					break
 				}
 				q, _ := sky.at(w.Field, w.Steps[i].Filter, p.Scopes[t].Site, s+length/2)
+				if ok = q >= w.MinQuality; !ok {
+					break
+				}
 				sum += q
 				c.busy = append(c.busy, model.Span{From: s, To: s + length + p.Scopes[t].LeastGap})
 				c.Exposure += model.Sec(length)
