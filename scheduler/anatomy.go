@@ -1,6 +1,7 @@
 package scheduler
 
 import (
+	"cmp"
 	"math"
 	"slices"
 
@@ -18,8 +19,9 @@ import (
 //
 // The first sum splits by what the time went to: Slews, Filters, Idle. Of the
 // second, Moment is what the plan's visits would gain by moving, alone, to the
-// best moment of their own window on their own telescope and night, other
-// visits being no obstacle. What is left, Choice, is which nights and fields
+// best moment of their own windows on their own telescope and night, other
+// visits being no obstacle, and each as far as half of the slack to its
+// neighbours in the cadence, so that all could move together. What is left, Choice, is which nights and fields
 // were chosen, the search's failures in that, and how far the ceiling itself is
 // above the best plan; the parts of Choice can't be told apart without an exact
 // optimum. The five sum to the gap.
@@ -44,10 +46,10 @@ func (a *Anatomy) Parts() []model.Part {
 func Dissect(p *model.Problem, plan *model.Plan, coverage, ceiling float64, prices []model.Price) Anatomy {
 	d := &dissector{p: p, slot: model.MicroOf(p.Survey.Slot)}
 	d.setPrices(prices)
-	byNight := make([][]model.Exposure, len(p.Scopes)*p.Nights)
-	for _, e := range plan.Exposures {
-		k := int(e.Telescope)*p.Nights + int(e.Night)
-		byNight[k] = append(byNight[k], e)
+	byNight := make([][]visit, len(p.Scopes)*p.Nights)
+	for _, v := range d.visits(plan) {
+		k := int(v.Telescope)*p.Nights + int(v.Night)
+		byNight[k] = append(byNight[k], v)
 	}
 	parts := make([]Anatomy, len(byNight))
 	model.Parallel(p.Workers, len(parts), func(k int) { parts[k] = d.night(k, byNight[k]) })
@@ -68,6 +70,36 @@ type dissector struct {
 	slot  int64
 	first int64       // slot number of rate[scope][0]
 	rate  [][]float64 // C per second
+}
+
+// visit is an exposure with the starts that its cadence leaves it.
+type visit struct {
+	model.Exposure
+	want   *model.Want // nil: none that is known
+	lo, hi int64
+}
+
+// visits gives each exposure half of the slack to its neighbours of the want.
+func (d *dissector) visits(plan *model.Plan) []visit {
+	out := make([]visit, len(plan.Exposures))
+	of := make([][]int, len(d.p.Wants))
+	for i, e := range plan.Exposures {
+		out[i] = visit{e, nil, math.MinInt64, math.MaxInt64}
+		for wi := d.p.FieldWant[e.Field]; wi < d.p.FieldWant[e.Field+1]; wi++ {
+			if d.p.Wants[wi].Demand == e.Demand {
+				out[i].want = &d.p.Wants[wi]
+				of[wi] = append(of[wi], i) // plans are sorted by start
+			}
+		}
+	}
+	for wi, list := range of {
+		for k := 1; k < len(list); k++ {
+			a, b := &out[list[k-1]], &out[list[k]]
+			half := max(0, b.Start-a.Start-d.p.Wants[wi].Spacing) / 2
+			a.hi, b.lo = a.Start+half, b.Start-half
+		}
+	}
+	return out
 }
 
 func (d *dissector) setPrices(prices []model.Price) {
@@ -111,14 +143,14 @@ func (d *dissector) cost(scope, night int, from, to int64) float64 {
 }
 
 // night splits one telescope-night's time.
-func (d *dissector) night(k int, list []model.Exposure) Anatomy {
+func (d *dissector) night(k int, list []visit) Anatomy {
 	var a Anatomy
 	scope, night := k/d.p.Nights, k%d.p.Nights
 	open := d.p.OpenOuter(scope, night)
 	if len(open) == 0 {
 		return a
 	}
-	slices.SortFunc(list, func(x, y model.Exposure) int { return int(x.Start - y.Start) })
+	slices.SortFunc(list, func(x, y visit) int { return cmp.Compare(x.Start, y.Start) })
 	from, to := open[0].From, open[len(open)-1].To
 	idle := d.cost(scope, night, from, to) - d.kept(scope, night)
 	least := d.p.Scopes[scope].LeastGap
@@ -130,7 +162,7 @@ func (d *dissector) night(k int, list []model.Exposure) Anatomy {
 		if i+1 == len(list) {
 			continue
 		}
-		plain, needed := d.gaps(e, &list[i+1])
+		plain, needed := d.gaps(&e.Exposure, &list[i+1].Exposure)
 		slews, change := d.cost(scope, night, end, e.End+plain), d.cost(scope, night, e.End+plain, e.End+needed)
 		a.Slews += slews
 		a.Filters += change
@@ -192,8 +224,8 @@ func (d *dissector) point(e *model.Exposure, us int64) (mount.Pointing, bool) {
 // the best moment of its own night there, other visits being no obstacle. The
 // moment is looked for in the shelf's steps and judged by its true quality. Sets
 // stay where they are: their exposures are tied to each other.
-func (d *dissector) moment(e *model.Exposure) float64 {
-	w := d.want(e)
+func (d *dissector) moment(e *visit) float64 {
+	w := e.want
 	if e.Set != 0 || e.State != model.Planned || w == nil {
 		return 0
 	}
@@ -212,7 +244,7 @@ func (d *dissector) moment(e *model.Exposure) float64 {
 	for _, win := range d.p.Windows.Of(int(w.Unit), int(d.p.Scopes[scope].Class), night) {
 		wf, wt := d.p.Inward(win)
 		for _, o := range d.p.Open(scope, night) {
-			lo, hi := max(wf, o.From), min(wt, o.To)-length
+			lo, hi := max(wf, o.From, e.lo), min(min(wt, o.To)-length, e.hi)
 			if hi < lo {
 				continue
 			}
@@ -229,14 +261,4 @@ func (d *dissector) moment(e *model.Exposure) float64 {
 		}
 	}
 	return math.Max(best, worth(guess)) - own
-}
-
-// want is the want that an exposure serves, or nil.
-func (d *dissector) want(e *model.Exposure) *model.Want {
-	for wi := d.p.FieldWant[e.Field]; wi < d.p.FieldWant[e.Field+1]; wi++ {
-		if d.p.Wants[wi].Demand == e.Demand {
-			return &d.p.Wants[wi]
-		}
-	}
-	return nil
 }
