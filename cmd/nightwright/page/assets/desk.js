@@ -126,6 +126,7 @@ function paint() { // at most once a frame, however fast the slider is dragged
 }
 
 one("moment").addEventListener("input", (e) => { desk.moment = Number(e.target.value); paint(); });
+one("zoom").addEventListener("change", (e) => lanes.zoom(Number(e.target.value)));
 one("site").addEventListener("change", (e) => { desk.site = Number(e.target.value); paint(); });
 one("shade").addEventListener("change", (e) => ribbon.set(desk.nights, e.target.value));
 one("date").addEventListener("change", (e) => { if (desk.nights.nights.includes(e.target.value)) open(e.target.value); });

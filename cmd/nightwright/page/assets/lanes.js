@@ -1,7 +1,7 @@
 // The lanes of a night: a telescope a lane, all on one axis of time.
 import { svg, clock, series, fixed } from "./shapes.js";
 
-const left = 76, high = 30, step = 46;
+const left = 76, high = 30, row = 46;
 
 export class Lanes {
   constructor(box, on) {
@@ -11,24 +11,37 @@ export class Lanes {
     new ResizeObserver(() => this.draw()).observe(box);
   }
 
-  set(night, survey, marks) { this.night = night; this.survey = survey; this.marks = marks; this.at = night.lanes.map(() => -1); this.draw(); }
-  x(t) { return left + ((t - this.night.from) / (this.night.to - this.night.from)) * (this.wide - left); }
-  t(x) { return this.night.from + ((x - left) / (this.wide - left)) * (this.night.to - this.night.from); }
-  clip(t) { return Math.max(this.night.from, Math.min(this.night.to, t)); }
+  // zoom shows so many hours around the moment, 0 all of the night.
+  zoom(hours) { this.hours = hours; this.draw(); }
 
-  rect(from, to, y, h, attributes) {
+  // window is the stretch of time in sight.
+  window() {
+    const n = this.night, h = (this.hours || 0) * 3600;
+    if (!h || h >= n.to - n.from) return [n.from, n.to];
+    const from = Math.max(n.from, Math.min(n.to - h, (this.now ?? n.from) - h / 2));
+    return [from, from + h];
+  }
+
+  set(night, survey, marks) { this.night = night; this.now = undefined; this.survey = survey; this.marks = marks; this.at = night.lanes.map(() => -1); this.draw(); }
+  x(t) { return left + ((t - this.from) / (this.to - this.from)) * (this.wide - left); }
+  t(x) { return this.from + ((x - left) / (this.wide - left)) * (this.to - this.from); }
+  clip(t) { return Math.max(this.from, Math.min(this.to, t)); }
+
+  rect(from, to, y, h, attributes, ...inside) {
     const a = this.x(this.clip(from)), b = this.x(this.clip(to));
-    return svg("rect", { x: fixed(a, 1), y, width: fixed(Math.max(0, b - a), 1), height: h, ...attributes });
+    return svg("rect", { x: fixed(a, 1), y, width: fixed(Math.max(0, b - a), 1), height: h, ...attributes }, ...inside);
   }
 
   draw() {
     const n = this.night, focused = document.activeElement?.dataset?.lane;
     this.wide = this.box.clientWidth;
     if (!n || !this.wide) return;
-    const tall = n.lanes.length * step + 24;
+    [this.from, this.to] = this.window();
+    const tall = n.lanes.length * row + 24;
     const s = svg("svg", { viewBox: `0 0 ${this.wide} ${tall}`, height: tall, role: "group", "aria-label": `Lanes of the night ${n.night}` });
     this.groups = n.lanes.map((l, k) => this.lane(l, k, s));
-    for (let t = Math.ceil(n.from / 3600) * 3600, every = Math.ceil(44 / ((this.wide - left) / ((n.to - n.from) / 3600))); t <= n.to; t += 3600 * every) {
+    const step = [600, 1800, 3600, 7200, 10800].find((s) => ((this.wide - left) * s) / (this.to - this.from) > 44) ?? 21600;
+    for (let t = Math.ceil(this.from / step) * step; t <= this.to; t += step) {
       s.append(svg("line", { x1: this.x(t), x2: this.x(t), y1: tall - 22, y2: tall - 17, class: "l-axis" }),
         svg("text", { x: this.x(t), y: tall - 4, class: "s", "text-anchor": "middle" }, clock(t)));
     }
@@ -40,16 +53,17 @@ export class Lanes {
   }
 
   lane(l, k, s) {
-    const y = k * step + 2, sky = this.night.sites[l.site], site = this.survey.sites[l.site].name;
+    const y = k * row + 2, sky = this.night.sites[l.site], site = this.survey.sites[l.site].name;
     const g = svg("g", { class: "lane", tabindex: 0, role: "group", "data-lane": k, "aria-label": `${l.telescope}, ${site}: ${l.visits.length} exposures, ${fixed(l.used_hours, 1)} of ${fixed(l.open_hours, 1)} hours used. Arrow keys go through them.` });
     g.append(svg("text", { x: 0, y: y + 13 }, l.telescope.slice(0, 11)), svg("text", { x: 0, y: y + 27, class: "s" }, site.slice(0, 13)));
-    g.append(this.rect(this.night.from, this.night.to, y, high, { class: "f-day edge" }));
+    g.append(this.rect(this.from, this.to, y, high, { class: "f-day edge" }));
     for (const [name, list] of [["dusk", sky.sun_down], ["gloom", sky.nautical], ["panel", sky.dark]]) for (const [a, b] of list) g.append(this.rect(a, b, y, high, { class: "f-" + name }));
     for (const [a, b] of sky.moon_up) g.append(this.rect(a, b, y + high + 2, 4, { class: "f-moon", opacity: (0.2 + 0.8 * sky.moon_illumination).toFixed(2) }));
     for (const [a, b] of l.open) g.append(this.rect(a, b, y, high, { class: "nofill l-axis" }));
-    l.visits.forEach((v) => g.append(this.rect(v.start, v.end, y + 4, high - 8, {
+    const seen = (v) => v.end > this.from && v.start < this.to;
+    l.visits.filter(seen).forEach((v) => g.append(this.rect(v.start, v.end, y + 4, high - 8, {
       class: "f-" + series(v.program) + (v.field === this.chosen ? " chosen" : ""), opacity: v.state === "done" ? 0.5 : 1, "data-field": v.field,
-    })));
+    }, this.to - this.from < 8 * 3600 ? svg("title", {}, `${clock(v.start)} ${v.name}, ${v.filter}`) : "")));
     for (const x of l.lost) g.append(svg("g", {}, svg("title", {}, `lost: ${x.cause}`), this.rect(x.from, x.to, y, high, { class: "lost" })));
     for (const m of this.marks) if (m.telescope === l.telescope || m.site === site) g.append(this.rect(m.from, m.to, y, high, { class: "mark" }));
     this.listen(g, l, k, y);
@@ -113,6 +127,7 @@ export class Lanes {
   moment(t) {
     this.now = t;
     if (!this.hair) return;
+    if (t < this.from || t > this.to) { this.draw(); return; } // it left the window
     const x = this.x(this.clip(t));
     this.hair.setAttribute("x1", x);
     this.hair.setAttribute("x2", x);
