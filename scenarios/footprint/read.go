@@ -173,7 +173,7 @@ func (r *reader) plan(top *yaml.Node) *Plan {
 	p.Name, _ = r.name(m, "region")
 	p.Program, _ = r.name(m, "program")
 	p.Prefix, _ = r.name(m, "prefix")
-	p.Diameter = degree * r.number(m, "field_of_view_deg", 0.001, 160, 0)
+	r.view(m, &p.Tiling)
 	p.Overlap = r.number(m, "overlap", 0, 0.9, 0)
 	if n := m.at["dithers"]; n != nil {
 		if d := r.keys(n, "dithers", []string{"count", "step_deg"}); d != nil {
@@ -206,4 +206,20 @@ func (r *reader) plan(top *yaml.Node) *Plan {
 		}
 	}
 	return p
+}
+
+// view reads how large a field is: a diameter, or width and height.
+func (r *reader) view(m *group, t *Tiling) {
+	const key = "field_of_view_deg"
+	n := m.at[key]
+	if n == nil {
+		return
+	}
+	if resolve(n).Kind != yaml.MappingNode {
+		t.Diameter = degree * r.number(m, key, 0.001, 160, 0)
+		return
+	}
+	if g := r.keys(n, key, []string{"width", "height"}); g != nil {
+		t.Width, t.Height = degree*r.need(g, "width", 0.001, 89), degree*r.need(g, "height", 0.001, 89)
+	}
 }

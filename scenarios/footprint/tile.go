@@ -13,9 +13,11 @@ const MaxFields = 1_000_000
 
 // Tiling says how a region is cut into fields.
 type Tiling struct {
-	Diameter float64 // of a field, rad
-	// Overlap, 0 to below 1, makes the pattern for circles smaller by that
-	// part than the fields are; 0 leaves no more overlap than circles need.
+	Diameter float64 // of a circular field, rad; 0 for a rectangle
+	// Width and Height of a rectangular field with north up, rad; 0 for a circle.
+	Width, Height float64
+	// Overlap, 0 to below 1, makes the pattern for fields smaller by that part
+	// than they are; 0 leaves no more overlap than the pattern needs.
 	Overlap float64
 	Dithers int     // copies of the pattern, 1 or more
 	Step    float64 // how far the further copies are moved, rad
@@ -45,19 +47,17 @@ const LeastPerArea = 1.2091995761561452 // 2 pi / (3 sqrt 3)
 
 // Fields cuts a region into fields, sorted from south to north and east,
 // dither after dither. The fields of dither 0 leave no gap: every point of
-// the region lies in one of them. Those of the further ones are moved by Step
-// towards directions spread evenly round the compass (seen from each field's
-// north; near a pole, where norths turn quickly, a copy alone may have gaps).
-// The error says what can't be done; it is ctx's when that ends.
+// the region lies in one of them, and none of those on the region's edge is
+// there for nothing. Those of the further dithers are moved by Step towards
+// directions spread evenly round the compass (seen from each field's north;
+// near a pole, where norths turn quickly, a copy alone may have gaps). The
+// error says what can't be done; it is ctx's when that ends.
 func (t Tiling) Fields(ctx context.Context, r *Region) ([]Field, error) {
-	radius := t.Diameter / 2 * (1 - t.Overlap)
-	if at := 4 * math.Pi / (Cap{Radius: radius}).Area(); at > 1e9 {
-		return nil, fmt.Errorf("fields of %.3g deg are too small to cover the sky with; want larger ones", t.Diameter*180/math.Pi)
+	rows, err := t.rows()
+	if err != nil {
+		return nil, err
 	}
-	rows := wholeSky(radius)
-	if rows == nil {
-		return nil, fmt.Errorf("fields of %.3g deg can't be laid in rows; want up to 160 deg", t.Diameter*180/math.Pi)
-	}
+	reach := t.reach()
 	var base []Field
 	for _, row := range rows {
 		if err := ctx.Err(); err != nil {
@@ -65,18 +65,55 @@ func (t Tiling) Fields(ctx context.Context, r *Region) ([]Field, error) {
 		}
 		for k := range row.count {
 			ra := 2 * math.Pi * (float64(k) + row.shift) / float64(row.count)
-			c := Circle{Direction(ra, row.dec), radius}
+			c := Circle{Direction(ra, row.dec), reach}
 			if !r.meets(c, 5) {
 				continue
 			}
 			f := Field{RA: ra, Dec: row.dec, Centre: c.Centre}
 			f.Program, f.Weight = r.claim(c)
 			if base = append(base, f); len(base)*max(1, t.Dithers) > MaxFields {
-				return nil, fmt.Errorf("the region takes more than %d fields of %.3g deg; want larger fields, fewer dithers or a smaller region", MaxFields, t.Diameter*180/math.Pi)
+				return nil, fmt.Errorf("the region takes more than %d fields of %s; want larger fields, fewer dithers or a smaller region", MaxFields, t.size())
 			}
 		}
 	}
+	if base, err = t.pruned(ctx, base, r); err != nil {
+		return nil, err
+	}
 	return t.dithered(base), nil
+}
+
+// rows are those of the whole sky.
+func (t *Tiling) rows() ([]ring, error) {
+	keep := 1 - t.Overlap
+	if at := 4 * math.Pi / t.FieldArea() / keep / keep; at > 1e9 {
+		return nil, fmt.Errorf("fields of %s are too small to cover the sky with; want larger ones", t.size())
+	}
+	if t.Width > 0 {
+		if rows := rectSky(t.Width*keep, t.Height*keep); rows != nil {
+			return rows, nil
+		}
+		return nil, fmt.Errorf("fields of %s can't be laid in rows; want less than 90 deg a side", t.size())
+	}
+	if rows := wholeSky(t.Diameter / 2 * keep); rows != nil {
+		return rows, nil
+	}
+	return nil, fmt.Errorf("fields of %s can't be laid in rows; want up to 160 deg", t.size())
+}
+
+// FieldArea is the area of one field, sr.
+func (t *Tiling) FieldArea() float64 {
+	if t.Width > 0 {
+		return RectArea(t.Width, t.Height)
+	}
+	return Cap{Radius: t.Diameter / 2}.Area()
+}
+
+// size writes how large a field is.
+func (t *Tiling) size() string {
+	if t.Width > 0 {
+		return fmt.Sprintf("%.3g x %.3g deg", t.Width*180/math.Pi, t.Height*180/math.Pi)
+	}
+	return fmt.Sprintf("%.3g deg", t.Diameter*180/math.Pi)
 }
 
 // claim returns program and weight of a field: those of the part that its

@@ -103,6 +103,24 @@ func TestCirclesKeepTheirArea(t *testing.T) {
 	}
 }
 
+// TestBoxesKeepTheirArea does the same for rectangles: 4 asin(sin w/2 sin h/2).
+func TestBoxesKeepTheirArea(t *testing.T) {
+	f := skyFrame{500, 250, 230}
+	for _, tt := range []struct{ ra, dec, w, h float64 }{
+		{180, 0, 10, 4}, {0, 0, 10, 4}, {359, 40, 6, 9}, {90, 88, 8, 8}, {0, 90, 10, 6}, {10, -89, 5, 7}, {200, 60, 20, 20},
+	} {
+		got := 0.0
+		rings := boxOutlines(tt.ra*math.Pi/180, tt.dec*math.Pi/180, tt.w*math.Pi/180, tt.h*math.Pi/180, 60)
+		for _, ring := range rings {
+			got += area(f.points(ring))
+		}
+		want := 4 * math.Asin(math.Sin(tt.w*math.Pi/360)*math.Sin(tt.h*math.Pi/360)) * f.scale * f.scale / 2
+		if math.Abs(got/want-1) > 0.012 {
+			t.Errorf("%v: %d pieces of %.1f px^2; want %.1f", tt, len(rings), got, want)
+		}
+	}
+}
+
 // TestNoCurveCrossesTheMap: a line on the sky that leaves the map on one side
 // comes back on the other, and is never drawn across.
 func TestNoCurveCrossesTheMap(t *testing.T) {
@@ -130,6 +148,7 @@ func everyPicture() []*Canvas {
 	curve := Curve{T: []float64{0, 86400}, Altitude: []float64{0.1, 0.9}}
 	return []*Canvas{
 		SkyMap("sky", hostile, []SkyField{{0, 1.5, 0.1, 0.3, false, hostile}, {3, 0, 0.01, 1, true, ""}}),
+		Tiles("tiles", hostile, []string{hostile, "b"}, []Tile{{RA: 1, Dec: 1.5, Width: 0.1, Height: 0.05}, {RA: 0, Dec: 0, Radius: 0.05, Kind: 1}}, hostile),
 		Balances("balance", hostile, []Balance{{hostile, 3, 2, 1}}, []Balance{{hostile, 3, 2, 1}}),
 		Calendar("calendar", hostile, []CalendarSite{site}, []float64{0, 86400}),
 		Lanes("night", hostile, []string{hostile}, []Lane{{Title: hostile, Span: night, Set: dark, Nautical: dark, Dark: dark, Open: dark, Curves: []Curve{curve}, Moon: curve, Blocks: []Block{{40000, 41000, 0, 0, hostile}}, Note: hostile}}),
@@ -171,7 +190,7 @@ func TestPicturesAreWellFormed(t *testing.T) {
 // TestEmptyPictures: nothing to show is no reason to fail.
 func TestEmptyPictures(t *testing.T) {
 	for _, c := range []*Canvas{
-		SkyMap("a", "", nil), Balances("b", "", nil, nil), Calendar("c", "", nil, nil), Lanes("d", "", nil, nil),
+		SkyMap("a", "", nil), Tiles("h", "", nil, nil, ""), Balances("b", "", nil, nil), Calendar("c", "", nil, nil), Lanes("d", "", nil, nil),
 		Progress("e", "", Course{}), Histogram("f", "", "", "", nil, nil), Estimates("g", "", "", nil),
 	} {
 		if text := c.SVG(); bytes.Contains(text, []byte("NaN")) || bytes.Contains(text, []byte("Inf")) {

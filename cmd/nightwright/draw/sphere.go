@@ -43,16 +43,51 @@ func lonOf(ra float64) float64 { return math.Remainder(ra-math.Pi, 2*math.Pi) }
 // one that runs along the edge to the pole where it holds a pole.
 func capOutlines(ra, dec, radius float64, n int) [][]spot {
 	radius = min(radius, math.Pi/3)
-	if math.Abs(dec)+radius >= math.Pi/2 {
-		return poleOutline(ra, dec, radius, n)
+	pole := math.Abs(dec)+radius >= math.Pi/2
+	if pole {
+		n *= 3
 	}
+	at := make([]spot, n)
+	for k := range at {
+		at[k].lon, at[k].lat = offset(ra, dec, radius, 2*math.Pi*float64(k)/float64(n))
+	}
+	return outlines(ra, dec, at, pole)
+}
+
+// boxOutlines does the same for a field with great circles for edges, north
+// up, width and height wide.
+func boxOutlines(ra, dec, width, height float64, n int) [][]spot {
+	x, y := math.Tan(width/2), math.Tan(height/2)
+	corners := []Point{{-x, -y}, {x, -y}, {x, y}, {-x, y}}
+	var at []spot
+	sd, cd := math.Sincos(dec)
+	for k, a := range corners {
+		b := corners[(k+1)%4]
+		for j := range n {
+			f := float64(j) / float64(n)
+			e, u := a.X+(b.X-a.X)*f, a.Y+(b.Y-a.Y)*f
+			// Gnomonic: the direction 1 + e east + u north (common practice).
+			r, z := cd-u*sd, sd+u*cd
+			at = append(at, spot{ra + math.Atan2(e, r), math.Atan2(z, math.Hypot(r, e))})
+		}
+	}
+	// The pole's place on the tangent plane: north of a northern centre.
+	pole := math.Abs(dec) > 1e-9 && cd/math.Abs(sd) <= y
+	return outlines(ra, dec, at, pole)
+}
+
+// outlines turns an outline of right ascensions and declinations into closed
+// shapes within the map.
+func outlines(ra, dec float64, at []spot, pole bool) [][]spot {
 	lon0 := lonOf(ra)
-	ring := make([]spot, n)
+	ring := make([]spot, len(at))
 	inside := true
-	for k := range ring {
-		pra, pdec := offset(ra, dec, radius, 2*math.Pi*float64(k)/float64(n))
-		ring[k] = spot{lon0 + math.Remainder(pra-ra, 2*math.Pi), pdec}
+	for k, p := range at {
+		ring[k] = spot{lon0 + math.Remainder(p.lon-ra, 2*math.Pi), p.lat}
 		inside = inside && math.Abs(ring[k].lon) <= math.Pi
+	}
+	if pole {
+		return poleOutline(ring, dec)
 	}
 	if inside {
 		return [][]spot{ring}
@@ -71,12 +106,10 @@ func capOutlines(ra, dec, radius float64, n int) [][]spot {
 	return out
 }
 
-// poleOutline is the outline of a circle that holds a pole or touches it.
-func poleOutline(ra, dec, radius float64, n int) [][]spot {
-	ring := make([]spot, 3*n)
+// poleOutline closes the outline of what holds a pole along the map's edge.
+func poleOutline(ring []spot, dec float64) [][]spot {
 	for k := range ring {
-		pra, pdec := offset(ra, dec, radius, 2*math.Pi*float64(k)/float64(3*n))
-		ring[k] = spot{lonOf(pra), pdec}
+		ring[k].lon = math.Remainder(ring[k].lon, 2*math.Pi)
 	}
 	slices.SortFunc(ring, func(a, b spot) int { return cmp.Compare(a.lon, b.lon) })
 	first, last := ring[0], ring[len(ring)-1]

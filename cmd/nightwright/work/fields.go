@@ -6,17 +6,20 @@ import (
 	"encoding/csv"
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
+	"strings"
 
 	"github.com/google/renameio/v2"
 
+	"nightwright/cmd/nightwright/draw"
 	"nightwright/scenarios/footprint"
 )
 
 // FieldsOptions say how to cut a region; what is not set is the region
 // file's, then the default.
 type FieldsOptions struct {
-	FieldOfView *float64 // diameter, deg
+	FieldOfView string   // deg: a diameter, or width x height such as 2x1.5; "": the file's
 	Overlap     *float64 // 0 to below 1
 	Dithers     *int
 	DitherStep  *float64 // deg
@@ -29,14 +32,16 @@ type FieldsOptions struct {
 // FieldsResult is what came of it. Areas are square degrees.
 type FieldsResult struct {
 	Region      string           `json:"region"`
-	Area        float64          `json:"area_deg2"` // of the region
-	FieldOfView float64          `json:"field_of_view_deg"`
+	Area        float64          `json:"area_deg2"`         // of the region
+	FieldOfView float64          `json:"field_of_view_deg"` // diameter; 0 for rectangles
+	Width       float64          `json:"field_width_deg"`   // of rectangles, else 0
+	Height      float64          `json:"field_height_deg"`
 	Overlap     float64          `json:"overlap"`
 	Dithers     int              `json:"dithers"`
 	Fields      int              `json:"fields"`
 	FieldArea   float64          `json:"field_area_deg2"`  // of one field
 	PerPoint    float64          `json:"fields_per_point"` // area of the fields of one dither over the region's
-	Least       float64          `json:"least_per_point"`  // that circles can do with in a plane
+	Least       float64          `json:"least_per_point"`  // that circles, or rectangles, can do with in a plane
 	Programs    []FieldsByOrigin `json:"programs"`
 	Out         string           `json:"out"`
 	Map         string           `json:"map"`
@@ -69,8 +74,11 @@ func Fields(ctx context.Context, path string, o FieldsOptions, opt Options) (*Fi
 	opt.tell("tiling", 1, 1)
 	const square = 180 / math.Pi * 180 / math.Pi
 	r := &FieldsResult{
-		Region: p.Name, Area: p.Area() * square, FieldOfView: p.Diameter * 180 / math.Pi, Overlap: p.Overlap, Dithers: p.Dithers,
-		Fields: len(fields), FieldArea: footprint.Cap{Radius: p.Diameter / 2}.Area() * square, Least: footprint.LeastPerArea, Out: o.Out, Map: o.Map,
+		Region: p.Name, Area: p.Area() * square, FieldOfView: p.Diameter * 180 / math.Pi, Width: p.Width * 180 / math.Pi, Height: p.Height * 180 / math.Pi, Overlap: p.Overlap, Dithers: p.Dithers,
+		Fields: len(fields), FieldArea: p.FieldArea() * square, Least: footprint.LeastPerArea, Out: o.Out, Map: o.Map,
+	}
+	if p.Width > 0 {
+		r.Least = 1 // rectangles tile a plane
 	}
 	r.PerPoint = r.FieldArea * float64(len(fields)/p.Dithers) / r.Area
 	at := map[string]int{}
@@ -85,7 +93,7 @@ func Fields(ctx context.Context, path string, o FieldsOptions, opt Options) (*Fi
 		r.Programs[k].Weight += fields[i].Weight
 	}
 	if o.Out != "" {
-		text, err := fieldList(fields, p.Diameter)
+		text, err := fieldList(fields, tileOf(p))
 		if err != nil {
 			return nil, err
 		}
@@ -94,7 +102,7 @@ func Fields(ctx context.Context, path string, o FieldsOptions, opt Options) (*Fi
 		}
 	}
 	if o.Map != "" {
-		if err := renameio.WriteFile(o.Map, footprint.Picture(p.Name, fields, p.Diameter), 0o644); err != nil {
+		if err := renameio.WriteFile(o.Map, fieldsMap(p, fields), 0o644); err != nil {
 			return nil, err
 		}
 	}
@@ -105,13 +113,12 @@ func Fields(ctx context.Context, path string, o FieldsOptions, opt Options) (*Fi
 // both together.
 func (o *FieldsOptions) fill(p *footprint.Plan) error {
 	const degree = math.Pi / 180
-	if v := o.FieldOfView; v != nil {
-		if !(*v >= 0.001 && *v <= 160) {
-			return Inputf("--field-of-view is %g; want 0.001 to 160 degrees", *v)
+	if o.FieldOfView != "" {
+		if err := setView(o.FieldOfView, &p.Tiling); err != nil {
+			return err
 		}
-		p.Diameter = *v * degree
 	}
-	if p.Diameter == 0 {
+	if p.Diameter == 0 && p.Width == 0 {
 		return Inputf("neither the region file nor --field-of-view says how large a field is; want such as --field-of-view 1.5")
 	}
 	if v := o.Overlap; v != nil {
@@ -178,4 +185,58 @@ func fieldList(fields []footprint.Field, diameter float64) ([]byte, error) {
 	}
 	w.Flush()
 	return b.Bytes(), w.Error()
+}
+
+// setView reads a field of view: a diameter, or width x height, deg.
+func setView(text string, t *footprint.Tiling) error {
+	const degree = math.Pi / 180
+	a, b, box := strings.Cut(strings.ToLower(text), "x")
+	number := func(text string, most float64) (float64, bool) {
+		v, err := strconv.ParseFloat(strings.TrimSpace(text), 64)
+		return v * degree, err == nil && v >= 0.001 && v <= most
+	}
+	if !box {
+		d, ok := number(a, 160)
+		if !ok {
+			return Inputf("--field-of-view is %s; want 0.001 to 160 degrees, or WIDTHxHEIGHT such as 2x1.5", text)
+		}
+		t.Diameter, t.Width, t.Height = d, 0, 0
+		return nil
+	}
+	w, ok1 := number(a, 89)
+	h, ok2 := number(b, 89)
+	if !ok1 || !ok2 {
+		return Inputf("--field-of-view is %s; want a width and a height of 0.001 to 89 degrees, such as 2x1.5", text)
+	}
+	t.Diameter, t.Width, t.Height = 0, w, h
+	return nil
+}
+
+// tileOf is the diameter of the circle that a telescope must see to take a
+// field, rad: of a rectangle the one that fits into it.
+func tileOf(p *footprint.Plan) float64 {
+	if p.Width > 0 {
+		return min(p.Width, p.Height)
+	}
+	return p.Diameter
+}
+
+// fieldsMap draws the fields on the sky.
+func fieldsMap(p *footprint.Plan, fields []footprint.Field) []byte {
+	var programs []string
+	tiles := make([]draw.Tile, len(fields))
+	for i := range fields {
+		f := &fields[i]
+		k := slices.Index(programs, f.Program)
+		if k < 0 {
+			k = len(programs)
+			programs = append(programs, f.Program)
+		}
+		tiles[i] = draw.Tile{RA: f.RA, Dec: f.Dec, Radius: p.Diameter / 2, Width: p.Width, Height: p.Height, Kind: k}
+	}
+	size := fmt.Sprintf("%.3g deg", p.Diameter*180/math.Pi)
+	if p.Width > 0 {
+		size = fmt.Sprintf("%.3g by %.3g deg", p.Width*180/math.Pi, p.Height*180/math.Pi)
+	}
+	return draw.Tiles("fields", p.Name, programs, tiles, fmt.Sprintf("%d fields of %s", len(fields), size)).SVG()
 }

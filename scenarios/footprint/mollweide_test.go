@@ -1,11 +1,7 @@
 package footprint
 
 import (
-	"encoding/xml"
-	"errors"
-	"io"
 	"math"
-	"strings"
 	"testing"
 )
 
@@ -35,31 +31,5 @@ func TestMollweide(t *testing.T) {
 	}
 	if x, _ := Mollweide(math.Pi/2, 0); x != 1 {
 		t.Errorf("right ascension 90 deg is at %g; want it on the right", x)
-	}
-}
-
-func TestPictureIsXML(t *testing.T) {
-	svg := Picture(`<b>"Ember" & belt</b>`, []Field{{RA: 1, Dec: 0.2, Program: "<wide>"}, {RA: 2, Dec: -0.2, Program: "deep"}}, degree)
-	d := xml.NewDecoder(strings.NewReader(string(svg)))
-	circles := 0
-	for {
-		tok, err := d.Token()
-		if errors.Is(err, io.EOF) {
-			break
-		}
-		if err != nil {
-			t.Fatal(err)
-		}
-		if s, ok := tok.(xml.StartElement); ok {
-			if s.Name.Local == "circle" {
-				circles++
-			}
-			if s.Name.Local == "b" {
-				t.Error("a name became markup")
-			}
-		}
-	}
-	if circles != 4 { // two fields, two in the key
-		t.Errorf("%d circles", circles)
 	}
 }
