@@ -30,6 +30,8 @@ type ask struct {
 	phases  bool
 	exact   int // s that an exact solver may take; 0: none
 	lp      int // the same for the linear relaxation
+	grid    float64
+	means   means
 	cut     cut
 }
 
@@ -45,6 +47,7 @@ func bench() error {
 	flag.IntVar(&a.workers, "workers", runtime.NumCPU(), "workers")
 	flag.BoolVar(&a.phases, "phases", false, "print when each phase ended")
 	flag.IntVar(&a.exact, "exact", 0, "bracket the best plan by glpsol and cbc, each for at most so many seconds: for families such as tiny")
+	flag.Float64Var(&a.grid, "grid", 300, "step of the starts of the exact programmes, s")
 	flag.IntVar(&a.lp, "lp", 0, "compare the ceiling with the slot model's linear relaxation by glpsol and cbc, each for at most so many seconds")
 	flag.IntVar(&a.cut.nights, "nights", 0, "take only so many nights")
 	flag.IntVar(&a.cut.fields, "fields", 0, "take only so many fields")
@@ -71,6 +74,7 @@ func bench() error {
 				return fmt.Errorf("%s: %w", name, err)
 			}
 		}
+		a.means.print(name)
 	}
 	return nil
 }

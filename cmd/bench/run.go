@@ -51,6 +51,7 @@ func run(name string, seed uint64, a *ask) error {
 	if err != nil {
 		return err
 	}
+	a.means.gap = append(a.means.gap, 100*model.Gap(out.Coverage, out.Ceiling))
 	fmt.Printf("| %s | %d | %s | %.4f | %.4f | %.2f |", name, seed, a.effort, out.Coverage, out.Ceiling, 100*model.Gap(out.Coverage, out.Ceiling))
 	for _, p := range out.Parts {
 		fmt.Printf(" %.2f |", 100*p.Worth/max(out.Ceiling, 1e-12))
@@ -66,7 +67,7 @@ func run(name string, seed uint64, a *ask) error {
 	if err != nil {
 		return err
 	}
-	o := outside{p: p, exact: exact, out: out}
+	o := outside{p: p, exact: exact, out: out, ask: a}
 	if a.exact > 0 {
 		if err := o.bracket(a.exact); err != nil {
 			return err

@@ -29,6 +29,7 @@ var families = []family{
 	{name: "medium", sites: 4, nights: 60, fields: 1000, shortest: 150, longest: 500, demand: 1.05, programs: 4, gapMin: 20 * 3600, set: true},
 	{name: "small", sites: 2, nights: 14, fields: 150, shortest: 900, longest: 2400, demand: 1.05, programs: 3, gapMin: 20 * 3600},
 	{name: "tiny", sites: 2, nights: 3, fields: 25, shortest: 4000, longest: 8000, demand: 1.3, programs: 5, gapMin: 4 * 3600},
+	{name: "tiny80", sites: 2, nights: 3, fields: 80, shortest: 4000, longest: 8000, demand: 3.8, programs: 5, gapMin: 4 * 3600},
 	{name: "short", sites: 2, nights: 8, fields: 500, shortest: 30, longest: 60, demand: 1.05, programs: 3, gapMin: 20 * 3600},
 	{name: "long", sites: 2, nights: 20, fields: 80, shortest: 3000, longest: 6000, demand: 1.1, programs: 4, gapMin: 20 * 3600},
 	{name: "cadence", sites: 3, nights: 30, fields: 400, shortest: 200, longest: 500, demand: 1.05, programs: 3, gapMin: 5 * 86400, twist: strict},

@@ -42,6 +42,9 @@ func (a *ask) inCells(sky *skyline, w *model.Want, step int, t int32, n int) []c
 	for _, win := range p.Outer(nil, w.Unit, p.Scopes[t].Class, n) {
 		for _, o := range p.OpenOuter(int(t), n) {
 			lo, hi := max(win.From, o.From), min(win.To, o.To)-length
+			if hi < lo {
+				continue
+			}
 			for c := lo / a.grid * a.grid; c <= hi; c += a.grid {
 				q := a.most(sky, w, step, t, max(lo, c)+length/2, min(hi, c+a.grid)+length/2)
 				if q < w.MinQuality {
