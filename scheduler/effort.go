@@ -7,51 +7,44 @@ import (
 
 // effort is what a search spends, in steps.
 type effort struct {
-	levels     []dual.Level
-	steer      dual.Level // from the ceiling's prices to the search's
+	soft       dual.Soft  // prices, smoothed
+	fine       dual.Level // and by the proving oracle
+	steer      int        // soft steps from the ceiling's prices to the search's
 	ceilingBin float64    // width of the start bins of the final ceiling, s
 	construct  float64    // theta of the construction
 	sweeps     []float64
 	iterations int // of small plans
 }
 
+// softPrices is the smoothed price search in so many steps down to a tau.
+func softPrices(steps int, last float64) dual.Soft {
+	return dual.Soft{
+		Steps: steps, Sample: 1, Tau: 0.1, TauLast: last,
+		Slot: 0.2, Night: 0.1, Most: 2, Network: 0.3, Memory: 0.5,
+	}
+}
+
+// finePrices are steps of the proving oracle from prices that are nearly right.
+func finePrices(steps int) dual.Level {
+	return dual.Level{
+		Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8,
+		Steps: steps, Sample: 1, Eta: 0.02, EtaLast: 0.005, Fine: true,
+	}
+}
+
 // efforts by name.
 var efforts = map[string]effort{
 	"quick": {
-		levels: []dual.Level{
-			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 8, Eta: 1, EtaLast: 0.2},
-			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 16, Sample: 2, Eta: 0.5, EtaLast: 0.1},
-			{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: 10, Sample: 1, Eta: 0.15, EtaLast: 0.02, Fine: true},
-		},
-		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 12, Sample: 2, Eta: 0.3, EtaLast: 0.05},
-		ceilingBin: 600,
-		construct:  1,
-		sweeps:     []float64{0.5, 0},
-		iterations: 50,
+		soft: softPrices(30, 0.001), fine: finePrices(3), steer: 3, ceilingBin: 600,
+		construct: 1, sweeps: []float64{0.5, 0}, iterations: 50,
 	},
 	"normal": {
-		levels: []dual.Level{
-			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 32, Sample: 8, Eta: 1, EtaLast: 0.2},
-			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 2, Eta: 0.5, EtaLast: 0.1},
-			{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: 20, Sample: 1, Eta: 0.15, EtaLast: 0.02, Fine: true},
-		},
-		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 16, Sample: 2, Eta: 0.3, EtaLast: 0.05},
-		ceilingBin: 300,
-		construct:  1,
-		sweeps:     []float64{1, 0.7, 0.4, 0},
-		iterations: 600,
+		soft: softPrices(60, 0.0005), fine: finePrices(10), steer: 5, ceilingBin: 300,
+		construct: 1, sweeps: []float64{1, 0.7, 0.4, 0}, iterations: 600,
 	},
 	"thorough": {
-		levels: []dual.Level{
-			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 40, Sample: 4, Eta: 1, EtaLast: 0.2},
-			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 40, Sample: 1, Eta: 0.5, EtaLast: 0.1},
-			{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: 60, Sample: 1, Eta: 0.2, EtaLast: 0.01, Fine: true},
-		},
-		steer:      dual.Level{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 2, Eta: 0.3, EtaLast: 0.05},
-		ceilingBin: 150,
-		construct:  1,
-		sweeps:     []float64{1, 1, 0.8, 0.6, 0.4, 0.2, 0, 0},
-		iterations: 3000,
+		soft: softPrices(150, 0.0003), fine: finePrices(30), steer: 8, ceilingBin: 150,
+		construct: 1, sweeps: []float64{1, 1, 0.8, 0.6, 0.4, 0.2, 0, 0}, iterations: 3000,
 	},
 }
 

@@ -94,18 +94,18 @@ type conductor struct {
 
 func (c *conductor) solve(seed uint64) *model.Outcome {
 	ascent := dual.NewAscent(c.p)
-	for i, lv := range c.effort.levels {
-		phase := fmt.Sprintf("prices %d of %d", i+1, len(c.effort.levels))
-		ascent.Run(c.prices, fit(c.p, lv), func(step, of int, _ float64) {
-			// The coarse bound proves nothing: it isn't told as a ceiling.
-			c.report(model.Progress{Phase: phase, Done: step, Total: of})
-		})
-	}
+	// A bound that proves nothing isn't told as a ceiling.
+	ascent.Soften(c.prices, c.effort.soft, func(step, of int, _ float64) {
+		c.report(model.Progress{Phase: "prices", Done: step, Total: of})
+	})
+	ascent.Run(c.prices, fit(c.p, c.effort.fine), func(step, of int, _ float64) {
+		c.report(model.Progress{Phase: "fine prices", Done: step, Total: of})
+	})
 	c.report(model.Progress{Phase: "ceiling"})
 	ceiling := ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)
 	c.report(model.Progress{Phase: "ceiling", Done: 1, Total: 1, Ceiling: ceiling})
 	prices, kept, relaxed := ascent.Prices().List(), ascent.Keep(), false
-	ascent.Steer(c.prices, c.effort.steer, func(step, of int, _ float64) {
+	ascent.Steer(c.prices, c.effort.soft, c.effort.steer, func(step, of int, _ float64) {
 		c.report(model.Progress{Phase: "steering", Done: step, Total: of, Ceiling: ceiling})
 	})
 	s := search.New(c.p, ascent.Prices(), ascent.Oracle().Mu, seed)

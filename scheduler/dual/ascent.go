@@ -47,7 +47,10 @@ type Ascent struct {
 	loads  [][]float32
 	times  [][]float64 // [chunk][program] exposure time of the picks, s
 	shares *shareState
-	rank   []int // a shuffle of the fields, for sampling
+	softs  []softLoad // [chunk] of a soft sweep
+	pace   []float64  // [rate index] last soft step
+	unit   []float64  // [rate index] C per second: what a visit there is worth
+	rank   []int      // a shuffle of the fields, for sampling
 }
 
 // chunks is the fixed number of parts the fields are worked in; loads merge
@@ -73,6 +76,10 @@ func NewAscent(p *model.Problem) *Ascent {
 		a.scale = 0.2 * value / time
 	}
 	a.rank = rand.New(rand.NewPCG(1, 0)).Perm(len(p.FieldWant) - 1)
+	a.unit = make([]float64, len(pr.rate))
+	for k := range a.unit {
+		a.unit[k] = a.scale
+	}
 	a.shares = newShareState(p)
 	a.times = make([][]float64, chunks)
 	for i := range a.times {
@@ -146,7 +153,7 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 					d += g.step[g.of[s]] * v
 				}
 			}
-			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.scale*d)
+			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.unit[s]*d)
 		}
 		if progress != nil {
 			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue()+a.shares.slack(a.oracle.Share))
@@ -172,6 +179,7 @@ func (a *Ascent) Keep() Kept {
 
 // Restore goes back to kept prices, and to the least gaps that a proof needs.
 func (a *Ascent) Restore(k Kept) {
+	a.oracle.soft = nil
 	copy(a.prices.rate, k.rate)
 	copy(a.oracle.Mu, k.mu)
 	copy(a.shares.low, k.low)
@@ -188,7 +196,7 @@ func (a *Ascent) Restore(k Kept) {
 // Steer turns the prices into ones for a plan search: visits are charged the
 // gap a plan will really need on the telescope, not the least. What it leaves
 // proves nothing; take List before.
-func (a *Ascent) Steer(ctx context.Context, lv Level, progress func(step, of int, bound float64)) {
+func (a *Ascent) Steer(ctx context.Context, st Soft, steps int, progress func(step, of int, bound float64)) {
 	o := a.oracle
 	for t := range o.shapes {
 		extra := max(0, a.p.Scopes[t].TypicalGap-a.p.Scopes[t].LeastGap)
@@ -196,7 +204,9 @@ func (a *Ascent) Steer(ctx context.Context, lv Level, progress func(step, of int
 			o.shapes[t][i].busy = o.shapes[t][i].length + a.p.Scopes[t].LeastGap + extra
 		}
 	}
-	a.Run(ctx, lv, progress)
+	o.soft = nil
+	st.Steps, st.Tau = steps, 4*st.TauLast
+	a.Soften(ctx, st, progress)
 }
 
 // keepFactor returns, per telescope, the part of the open time that keep_free leaves.

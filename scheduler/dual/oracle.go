@@ -38,6 +38,7 @@ type Oracle struct {
 	fine     bool
 	bounds   []*visibility.BoundGrid // fine: [site*Nights + night]
 	starts   [][]starts              // [scope*Nights + night][shape]
+	soft     [][]cells               // soft: [scope*Nights + night][shape]
 	// Mu is each want's count multiplier, kept between calls.
 	Mu []float64
 	// Share is the value added per second of scaled exposure, by program: the

@@ -25,12 +25,16 @@ type placer struct {
 	only     []bool // [scope * Nights + night]; nil: all
 }
 
-// startBin is the width of the bins in which the finder keeps one spot, s.
-const startBin = 200
+// startBin is the width of the bins in which the finder keeps one spot, s;
+// wideBin where a night can hold one visit of a want anyway.
+const (
+	startBin = 200
+	wideBin  = 1800
+)
 
 func newPlacer(s *state, mu []float64) *placer {
 	pl := &placer{s: s, mu: slices.Clone(mu), to: s.p.Nights}
-	pl.find = finder{s: s, bin: startBin * model.Micro}
+	pl.find = finder{s: s}
 	for range s.p.Workers {
 		pl.scouts = append(pl.scouts, scout{find: pl.find})
 	}
@@ -196,7 +200,7 @@ func (pl *placer) gather(wi int, w *model.Want, least, extra float64) {
 func (pl *placer) isBanned(sp spot) bool {
 	for i := range pl.banned {
 		b := &pl.banned[i]
-		if b.scope == sp.scope && b.night == sp.night && b.start/pl.find.bin == sp.start/pl.find.bin && b.eject == sp.eject {
+		if b.scope == sp.scope && b.night == sp.night && b.start/(startBin*model.Micro) == sp.start/(startBin*model.Micro) && b.eject == sp.eject {
 			return true
 		}
 	}

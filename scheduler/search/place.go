@@ -61,6 +61,7 @@ type finder struct {
 	noise  float64 // part of a worth that chance adds or takes
 	salt   uint64  // what chance hangs on
 	only   Range   // when not zero, starts are looked for inside it alone
+	worthy []Range // stretches of starts that can pay
 }
 
 // Range is a stretch of starts [From, To], us.
@@ -86,6 +87,10 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	}
 	f.w, f.step, f.scope, f.night, f.least = w, step, scope, int32(nightIndex), least
 	f.value = w.Value / float64(len(w.Steps))
+	f.bin = startBin * model.Micro
+	if len(w.Steps) == 1 && w.Spacing >= 12*3600*model.Micro {
+		f.bin = wideBin * model.Micro
+	}
 	st := &w.Steps[step]
 	class := s.p.Scopes[scope].Class
 	f.length = s.p.Length(st, scope)
@@ -117,19 +122,61 @@ func (f *finder) find(w *model.Want, step int, scope int32, nightIndex int, leas
 	f.known = grow(f.known, len(f.g.Frames))
 	clear(f.known)
 	f.poses = grow(f.poses, len(f.g.Frames))
+	f.screen()
 	for _, win := range windows {
 		wf, wt := s.p.Inward(win)
 		for _, o := range open {
 			lo, hi := max(wf, o.From), min(wt, o.To)-f.length-ease
-			if f.only.To != 0 {
-				lo, hi = max(lo, f.only.From), min(hi, f.only.To)
-			}
-			if hi >= lo {
-				f.stretch(lo, hi)
+			for _, r := range f.worthy {
+				if a, b := max(lo, r.From), min(hi, r.To); b >= a {
+					f.stretch(a, b)
+				}
 			}
 		}
 	}
 	return from
+}
+
+// screen leaves in f.worthy the stretches of starts that can be worth more than
+// least: by the better of the shelf's qualities about the middle, less the
+// price of the exposure alone. A spot that would only pay because what it
+// ejects isn't worth its own price is passed over: its own field sees to that.
+func (f *finder) screen() {
+	f.worthy = f.worthy[:0]
+	if f.only.To != 0 {
+		f.worthy = append(f.worthy, f.only)
+		return
+	}
+	s := f.s
+	half := f.length / 2
+	for k := 0; k+1 < len(f.row); k++ {
+		q := float64(int(max(f.row[k], f.row[k+1]))+1) / 255
+		worth := f.value*q*(1+f.noise) + f.extra
+		if worth <= f.least {
+			continue
+		}
+		r := Range{f.first + int64(k)*shelfUS - half, f.first + int64(k+1)*shelfUS - half}
+		if s.theta > 0 {
+			price := min(s.price.At(int(f.scope), r.From), s.price.At(int(f.scope), r.To))
+			if worth-s.theta*price*model.Sec(f.length) <= f.least {
+				continue
+			}
+		}
+		if n := len(f.worthy); n > 0 && f.worthy[n-1].To == r.From {
+			f.worthy[n-1].To = r.To
+		} else {
+			f.worthy = append(f.worthy, r)
+		}
+	}
+	// quality takes the last byte for all that is later, the first for earlier.
+	if n := len(f.worthy); n > 0 {
+		if f.worthy[n-1].To == f.first+int64(len(f.row)-1)*shelfUS-half {
+			f.worthy[n-1].To = math.MaxInt64 / 2
+		}
+		if f.worthy[0].From == f.first-half {
+			f.worthy[0].From = math.MinInt64 / 2
+		}
+	}
 }
 
 // know computes the pointing at a frame once.
