@@ -19,17 +19,14 @@ type effort struct {
 // softPrices is the smoothed price search in so many steps down to a tau.
 func softPrices(steps int, last float64) dual.Soft {
 	return dual.Soft{
-		Steps: steps, Sample: 1, Tau: 0.1, TauLast: last,
+		Steps: steps, Tau: 0.1, TauLast: last,
 		Slot: 0.2, Night: 0.1, Most: 2, Network: 0.3, Memory: 0.5,
 	}
 }
 
 // finePrices are steps of the proving oracle from prices that are nearly right.
 func finePrices(steps int) dual.Level {
-	return dual.Level{
-		Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8,
-		Steps: steps, Sample: 1, Eta: 0.02, EtaLast: 0.005, Fine: true,
-	}
+	return dual.Level{Memory: 0.8, Steps: steps, Eta: 0.02, EtaLast: 0.005}
 }
 
 // efforts by name.
@@ -58,9 +55,6 @@ const (
 // fit scales a fine level's steps to the survey's size: each costs as much as
 // a ceiling.
 func fit(p *model.Problem, lv dual.Level) dual.Level {
-	if !lv.Fine {
-		return lv
-	}
 	cells := 0
 	for i := range p.Wants {
 		cells += len(p.Wants[i].Scopes) * p.Nights

@@ -88,12 +88,12 @@ type bounder struct {
 
 // run takes the price levels of the effort and returns the ceiling.
 func (b *bounder) run(p *model.Problem, a *dual.Ascent, what string) float64 {
-	for i, lv := range b.effort.levels {
-		phase := fmt.Sprintf("%s prices %d of %d", what, i+1, len(b.effort.levels))
-		a.Run(b.ctx, fit(p, lv), func(step, of int, _ float64) {
-			b.report(model.Progress{Phase: phase, Done: step, Total: of})
-		})
-	}
+	a.Soften(b.ctx, b.effort.soft, func(step, of int, _ float64) {
+		b.report(model.Progress{Phase: what + " prices", Done: step, Total: of})
+	})
+	a.Run(b.ctx, fit(p, b.effort.fine), func(step, of int, _ float64) {
+		b.report(model.Progress{Phase: what + " fine prices", Done: step, Total: of})
+	})
 	b.report(model.Progress{Phase: what + " ceiling"})
 	return a.CeilingWithin(b.ctx, b.effort.ceilingBin)
 }

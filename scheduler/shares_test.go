@@ -84,7 +84,7 @@ func TestMissedShareBoundsWhatWasReached(t *testing.T) {
 		t.Fatalf("program %d has all of its share, %g; the test wants a breach", p, o.Shares[p].Share)
 	}
 	a := dual.NewAscent(k.Problem)
-	a.Run(t.Context(), dual.Level{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.6, Steps: 30, Sample: 1, Eta: 0.5, EtaLast: 0.05}, nil)
+	a.Run(t.Context(), dual.Level{Memory: 0.6, Steps: 30, Eta: 0.5, EtaLast: 0.05}, nil)
 	asked := a.Ceiling(600)
 	a.Relax(p, o.Shares[p].Share)
 	reached := a.Ceiling(600)

@@ -8,35 +8,35 @@ import (
 	"nightwright/scheduler/model"
 )
 
-// Level is one stage of the price search: prices move in blocks of slots, on
-// a sample of the fields.
+// Level is one stage of the price search on the proving oracle: slots move by
+// their relative excess demand.
 type Level struct {
-	Block   Block // the smallest blocks
 	Steps   int
-	Sample  int     // every Sample-th field, changing with the step
 	Eta     float64 // first step size
 	EtaLast float64
 	Memory  float64 // part of the old direction kept each step
-	Fine    bool    // on the proving oracle, keeping the best prices met; Sample 1
 }
 
-// Block says how slots are grouped.
-type Block struct {
-	Nights  int     // nights a block spans; 0: all
-	Hours   float64 // sidereal hours it spans; 0 with one night: single slots; 24: whole nights
-	Network bool    // over all telescopes
-	Gain    float64
+// block says how slots are grouped.
+type block struct {
+	nights  int     // nights a block spans; 0: all
+	hours   float64 // sidereal hours it spans; 0: single slots; 24: whole nights
+	network bool    // over all telescopes
+	gain    float64
 }
 
 // parents are the coarser groups whose excess moves every price below them
 // too. Load answers a price that rises everywhere much less than one that
 // rises in a single slot, so the coarser the group, the greater its gain.
-var parents = []Block{
-	{Nights: 0, Hours: 24, Network: true, Gain: 4},
-	{Nights: 7, Hours: 24, Network: true, Gain: 1},
-	{Nights: 1, Hours: 24, Network: true, Gain: 0.5},
-	{Nights: 1, Hours: 24, Gain: 0.5},
+var parents = []block{
+	{nights: 0, hours: 24, network: true, gain: 4},
+	{nights: 7, hours: 24, network: true, gain: 1},
+	{nights: 1, hours: 24, network: true, gain: 0.5},
+	{nights: 1, hours: 24, gain: 0.5},
 }
+
+// networks is how many of the parents are groups over all telescopes.
+const networks = 3
 
 // Ascent finds prices that bring the bound down, coarse to fine.
 type Ascent struct {
@@ -98,42 +98,38 @@ func (a *Ascent) Prices() *Prices { return a.prices }
 // Oracle returns the oracle with its multipliers.
 func (a *Ascent) Oracle() *Oracle { return a.oracle }
 
-// Run takes the steps of one level. progress may be nil.
+// Run takes the steps of one level, and ends at the best prices met. progress
+// may be nil.
 func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, bound float64)) {
 	if lv.Steps == 0 || a.scale == 0 {
 		return
 	}
-	if lv.Fine {
-		a.oracle.Fine(fineBin)
-	} else {
-		a.oracle.Coarse()
-	}
+	a.oracle.Fine(fineBin)
 	best := math.Inf(1)
 	var kept Kept
-	groups := []*group{a.group(lv.Block, lv.Memory)}
+	groups := []*group{a.group(block{nights: 1, gain: 1}, lv.Memory)}
 	for _, pb := range parents {
-		if pb.coarser(lv.Block) {
-			groups = append(groups, a.group(pb, 0.5*lv.Memory))
-		}
+		groups = append(groups, a.group(pb, 0.5*lv.Memory))
 	}
 	load := make([]float64, len(a.prices.rate))
 	for step := range lv.Steps {
 		if ctx.Err() != nil {
-			return
+			break
 		}
 		eta := lv.Eta * math.Pow(lv.EtaLast/lv.Eta, float64(step)/math.Max(1, float64(lv.Steps-1)))
 		a.oracle.Refresh()
-		bound := a.sweep(ctx, lv.Sample, step%lv.Sample)
+		bound := a.sweep(ctx)
 		if ctx.Err() != nil {
 			break
 		}
-		if full := bound + a.capacityValue() - a.keepFreeValue() + a.shares.slack(a.oracle.Share); lv.Fine && full < best {
-			best, kept = full, a.Keep()
+		bound += a.capacityValue() - a.keepFreeValue() + a.shares.slack(a.oracle.Share)
+		if bound < best {
+			best, kept = bound, a.Keep()
 		}
 		clear(load)
 		for _, l := range a.loads {
 			for s, x := range l {
-				load[s] += float64(x) * float64(lv.Sample)
+				load[s] += float64(x)
 			}
 		}
 		for _, g := range groups {
@@ -156,10 +152,10 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.unit[s]*d)
 		}
 		if progress != nil {
-			progress(step+1, lv.Steps, bound*float64(lv.Sample)+a.capacityValue()+a.shares.slack(a.oracle.Share))
+			progress(step+1, lv.Steps, bound)
 		}
 	}
-	if lv.Fine && !math.IsInf(best, 1) {
+	if !math.IsInf(best, 1) {
 		a.Restore(kept)
 	}
 	a.prices.integrate()
@@ -227,9 +223,8 @@ func (a *Ascent) capacityValue() float64 {
 	return sum
 }
 
-// sweep solves every sample-th field from offset and leaves the loads; it
-// returns the sum of the wants' bounds.
-func (a *Ascent) sweep(ctx context.Context, sample, offset int) float64 {
+// sweep solves every field and leaves the loads; it returns the sum of the wants' bounds.
+func (a *Ascent) sweep(ctx context.Context) float64 {
 	sums := make([]float64, chunks)
 	o := a.oracle
 	fields := len(a.p.FieldWant) - 1
@@ -241,9 +236,6 @@ func (a *Ascent) sweep(ctx context.Context, sample, offset int) float64 {
 		clear(load)
 		clear(a.times[c])
 		for f := c * fields / chunks; f < (c+1)*fields/chunks; f++ {
-			if a.rank[f]%sample != offset {
-				continue
-			}
 			if f%32 == 0 && ctx.Err() != nil {
 				return
 			}
@@ -320,31 +312,16 @@ func (g *group) move(load []float64) {
 	}
 }
 
-// coarser reports whether b groups more than a level's own blocks.
-func (b Block) coarser(than Block) bool {
-	size := func(x Block) float64 {
-		n := float64(x.Nights)
-		if x.Nights == 0 {
-			n = 1e4
-		}
-		if x.Network {
-			n *= 10
-		}
-		return n * math.Max(x.Hours, 0.1)
-	}
-	return size(b) > 1.5*size(than)
-}
-
 // group assigns each slot to its block: telescope, group of nights, and
 // sidereal hours.
-func (a *Ascent) group(bl Block, memory float64) *group {
+func (a *Ascent) group(bl block, memory float64) *group {
 	pr := a.prices
-	g := &group{of: make([]int32, len(pr.rate)), most: bl.Gain, memory: memory}
+	g := &group{of: make([]int32, len(pr.rate)), most: bl.gain, memory: memory}
 	n := a.assign(g.of, bl)
 	g.capacity, g.load, g.velocity = make([]float64, n), make([]float64, n), make([]float64, n)
 	g.step = make([]float64, n)
 	for i := range g.step {
-		g.step[i] = bl.Gain
+		g.step[i] = bl.gain
 	}
 	keep := a.keepFactor()
 	for s, c := range pr.capacity {
@@ -356,23 +333,23 @@ func (a *Ascent) group(bl Block, memory float64) *group {
 }
 
 // assign fills of with block numbers and returns how many there are.
-func (a *Ascent) assign(of []int32, bl Block) int {
+func (a *Ascent) assign(of []int32, bl block) int {
 	pr := a.prices
-	if bl.Hours == 0 {
+	if bl.hours == 0 {
 		for s := range of {
 			of[s] = int32(s)
 		}
 		return len(of)
 	}
-	perDay := int(math.Ceil(24 / bl.Hours))
-	nights := bl.Nights
+	perDay := int(math.Ceil(24 / bl.hours))
+	nights := bl.nights
 	if nights == 0 {
 		nights = a.p.Nights + 4
 	}
 	groups := (a.p.Nights+2)/nights + 2
 	for t := range a.p.Scopes {
 		row := t
-		if bl.Network {
+		if bl.network {
 			row = 0
 		}
 		lon := a.p.Survey.Sites[a.p.Scopes[t].Site].Longitude
@@ -386,7 +363,7 @@ func (a *Ascent) assign(of []int32, bl Block) int {
 			if lst < 0 {
 				lst++
 			}
-			h := min(int(lst*24/bl.Hours), perDay-1)
+			h := min(int(lst*24/bl.hours), perDay-1)
 			of[t*pr.n+s] = int32((row*groups+group)*perDay + h)
 		}
 	}

@@ -25,7 +25,7 @@ func (a *Ascent) Ceiling(width float64) float64 {
 func (a *Ascent) CeilingWithin(ctx context.Context, width float64) float64 {
 	a.oracle.Fine(width)
 	a.oracle.Refresh()
-	best := a.sweep(ctx, 1, 0)
+	best := a.sweep(ctx)
 	if ctx.Err() != nil {
 		return 1
 	}

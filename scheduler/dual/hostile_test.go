@@ -302,7 +302,7 @@ func underCeilings(t *testing.T, k *trial.Kit, coverage float64, r *rand.Rand, n
 		how := "random prices"
 		if i%3 == 0 {
 			how = "searched prices"
-			lv := dual.Level{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.6, Steps: 5 + r.IntN(60), Sample: 1, Eta: 0.5, EtaLast: 0.02}
+			lv := dual.Level{Memory: 0.6, Steps: 5 + r.IntN(60), Eta: 0.5, EtaLast: 0.02}
 			a.Run(t.Context(), lv, nil)
 		} else {
 			randomRates(a, r, scale)

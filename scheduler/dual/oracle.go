@@ -27,15 +27,13 @@ import (
 type Oracle struct {
 	p        *model.Problem
 	prices   *Prices
-	least    []float64         // [scope*Nights + night] least price in open time
-	costs    [][][]coarseStart // coarse: [scope*Nights + night][shape] by slot edge
-	shapes   [][]shape         // [scope]
-	shapeOf  [][]int32         // [want step kind][scope]: index into shapes[scope]
-	kinds    [][]int32         // [want][step] -> kind
-	bin      int64             // width of a start bin, us
+	least    []float64 // [scope*Nights + night] least price in open time
+	shapes   [][]shape // [scope]
+	shapeOf  [][]int32 // [want step kind][scope]: index into shapes[scope]
+	kinds    [][]int32 // [want][step] -> kind
+	bin      int64     // width of a start bin, us
 	firstBin int64
 	bins     int
-	fine     bool
 	bounds   []*visibility.BoundGrid // fine: [site*Nights + night]
 	starts   [][]starts              // [scope*Nights + night][shape]
 	soft     [][]cells               // soft: [scope*Nights + night][shape]
@@ -80,7 +78,6 @@ func NewOracle(p *model.Problem, prices *Prices) *Oracle {
 // Fine makes the oracle prove: start bins of the given width in s and every
 // break point.
 func (o *Oracle) Fine(width float64) {
-	o.fine = true
 	o.setBins(width)
 	if o.bounds == nil {
 		o.bounds = make([]*visibility.BoundGrid, len(o.p.Survey.Sites)*o.p.Nights)
@@ -94,14 +91,6 @@ func (o *Oracle) Fine(width float64) {
 	o.table()
 }
 
-// Coarse makes the oracle quick: starts on the slot edges alone and
-// qualities from the shelf. What it returns steers prices and proves nothing.
-func (o *Oracle) Coarse() {
-	o.fine = false
-	o.starts = nil
-	o.setBins(model.ShelfStep)
-}
-
 func (o *Oracle) setBins(width float64) {
 	o.bin = model.MicroOf(width)
 	o.firstBin = floorDiv(o.prices.first*o.prices.slot, o.bin)
@@ -112,10 +101,6 @@ func (o *Oracle) setBins(width float64) {
 func (o *Oracle) Refresh() {
 	o.prices.integrate()
 	o.least = o.prices.leastRates(o.least)
-	if !o.fine {
-		o.coarseCosts()
-		return
-	}
 	model.Parallel(o.p.Workers, len(o.starts), func(i int) {
 		pn := &o.prices.nights[i]
 		for s := range o.starts[i] {
@@ -216,10 +201,6 @@ func (o *Oracle) gatherNight(sc *scratch, wi int, w *model.Want, t int32, n int,
 		return
 	}
 	if o.limit(w, t, n) <= floor || o.p.Barred(w, t, n) {
-		return
-	}
-	if !o.fine {
-		o.coarseNight(sc, wi, w, t, n, floor)
 		return
 	}
 	if len(w.Steps) == 1 {

@@ -26,7 +26,7 @@ func crowded(nights, fields int) *survey.Survey {
 const priceBin = 600
 
 func fineLevel(steps int) dual.Level {
-	return dual.Level{Block: dual.Block{Nights: 1, Hours: 0, Gain: 1}, Memory: 0.8, Steps: steps, Sample: 1, Eta: 0.1, EtaLast: 0.005, Fine: true}
+	return dual.Level{Memory: 0.8, Steps: steps, Eta: 0.1, EtaLast: 0.005}
 }
 
 // optimised finds prices for a problem, from those of another search where
@@ -34,12 +34,7 @@ func fineLevel(steps int) dual.Level {
 func optimised(t *testing.T, a *dual.Ascent, warm []model.Price, slot float64, steps int) float64 {
 	t.Helper()
 	if warm == nil {
-		for _, lv := range []dual.Level{
-			{Block: dual.Block{Nights: 7, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 24, Sample: 1, Eta: 1, EtaLast: 0.2},
-			{Block: dual.Block{Nights: 1, Hours: 1, Gain: 1}, Memory: 0.6, Steps: 16, Sample: 1, Eta: 0.5, EtaLast: 0.1},
-		} {
-			a.Run(t.Context(), lv, nil)
-		}
+		a.Soften(t.Context(), dual.Soft{Steps: 40, Tau: 0.1, TauLast: 0.001, Slot: 0.2, Night: 0.1, Most: 2, Network: 0.3, Memory: 0.5}, nil)
 	} else {
 		at := map[[2]int64]float64{}
 		first := int64(math.MaxInt64)

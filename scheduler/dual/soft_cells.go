@@ -12,6 +12,9 @@ import (
 // price knots and those whose end (gap and all) falls on one are enough, with
 // the ends of open time and the first dark middle at a moonrise or moonset.
 
+// shelfUS is the shelf's step, us.
+const shelfUS = model.ShelfStep * model.Micro
+
 // cells are the starts of one telescope-night for exposures of one shape.
 type cells struct {
 	at    []int64
@@ -100,9 +103,9 @@ func (o *Oracle) softCosts() {
 	})
 }
 
-// row fills sc.row with the worths of a step's starts in a telescope-night and
-// returns the range [from, to) of starts it may use; worths of starts outside
-// its windows are -Inf.
+// fillRow fills row with the worths of a step's starts in a telescope-night and
+// returns it, the range [from, to) of starts the step may use, and their greatest
+// worth; starts between two of its windows are -Inf.
 func (sc *softScratch) fillRow(o *Oracle, wi int, w *model.Want, step int, t int32, n int, row []float64) (_ []float64, from, to int, top float64) {
 	scope := &o.p.Scopes[t]
 	first, q := o.p.Shelf.Row(scope.Class, n, w.Steps[step].Row)

@@ -10,7 +10,6 @@ import (
 // Soft is one stage of the smoothed price search.
 type Soft struct {
 	Steps        int
-	Sample       int     // every Sample-th field, changing with the step
 	Tau, TauLast float64 // smoothing, part of a visit's value
 	Slot, Night  float64 // damping of Newton's steps
 	Most         float64 // bound of a step, in units that make a set e times less likely
@@ -23,10 +22,9 @@ func (a *Ascent) Soften(ctx context.Context, st Soft, progress func(step, of int
 	if st.Steps == 0 || a.scale == 0 {
 		return
 	}
-	a.oracle.Coarse()
 	a.layLoads(a.oracle.softCells())
 	var groups []*group
-	for _, pb := range parents[:3] {
+	for _, pb := range parents[:networks] {
 		groups = append(groups, a.group(pb, 0.5))
 	}
 	load := make([]float64, len(a.prices.rate))
@@ -46,21 +44,38 @@ func (a *Ascent) Soften(ctx context.Context, st Soft, progress func(step, of int
 		a.oracle.least = a.prices.leastRates(a.oracle.least)
 		a.oracle.softCosts()
 		tau := along(st.Tau, st.TauLast, step)
-		bound := a.softSweep(ctx, tau, st.Sample, step%st.Sample)
+		sample := a.sample(tau, st.Steps-step)
+		bound := a.softSweep(ctx, tau, sample, step%sample)
 		if ctx.Err() != nil {
 			break
 		}
-		a.sumLoads(load, give, float64(st.Sample))
-		bound += a.capacityValue() - a.keepFreeValue() + a.shares.slack()
+		a.sumLoads(load, give, float64(sample))
+		bound += a.capacityValue() - a.keepFreeValue() + a.shares.slack(a.oracle.Share)
 		for _, g := range groups {
 			g.move(load)
 		}
-		a.moveSoft(st, fall, groups, load, give, tau, float64(st.Sample))
+		a.moveSoft(st, fall, groups, load, give, tau, float64(sample))
 		if progress != nil {
 			progress(step+1, st.Steps, bound)
 		}
 	}
 	a.prices.integrate()
+}
+
+// sample says which part of the fields (one in so many) a step looks at: the
+// more smoothing there is, the fewer show where the load is. The last steps look
+// at all.
+func (a *Ascent) sample(tau float64, left int) int {
+	enough := 3000
+	switch {
+	case left <= 2:
+		return 1
+	case tau >= 0.02:
+		enough = 600
+	case tau >= 0.005:
+		enough = 1500
+	}
+	return max(1, (len(a.p.FieldWant)-1)/enough)
 }
 
 func (a *Ascent) layLoads(n int) {
@@ -173,8 +188,8 @@ func (a *Ascent) moveSoft(st Soft, fall float64, groups []*group, load, give []f
 			a.pace[k] = pr.rate[k] - old
 		}
 	}
-	a.shares.move(a.p, a.softs[0].time, 5*tau*a.scale)
-	a.shares.rates(a.p, a.oracle.Share)
+	a.shares.move(a.softs[0].time, 5*tau*a.scale)
+	a.shares.rates(a.oracle.Share)
 }
 
 // answer is the change of price that brings a load to its capacity: load falls
