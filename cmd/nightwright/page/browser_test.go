@@ -12,10 +12,11 @@ import (
 
 	"github.com/chromedp/cdproto/input"
 	"github.com/chromedp/chromedp"
+	"github.com/chromedp/chromedp/kb"
 )
 
-// browser starts Chromium; errors of the page's scripts fail the test.
-func browser(t *testing.T) context.Context {
+// browser starts Chromium, with more of its options where they are given.
+func browser(t *testing.T, more ...chromedp.ExecAllocatorOption) context.Context {
 	t.Helper()
 	path := ""
 	for _, name := range []string{"chromium", "chromium-browser", "google-chrome"} {
@@ -31,6 +32,7 @@ func browser(t *testing.T) context.Context {
 		t.Skip("no chromium in the path")
 	}
 	opts := append(chromedp.DefaultExecAllocatorOptions[:], chromedp.ExecPath(path), chromedp.NoSandbox, chromedp.DisableGPU, chromedp.WindowSize(1280, 800))
+	opts = append(opts, more...)
 	ctx, cancel := chromedp.NewExecAllocator(t.Context(), opts...)
 	t.Cleanup(cancel)
 	ctx, cancel = chromedp.NewContext(ctx)
@@ -133,7 +135,7 @@ func TestPlannersDay(t *testing.T) {
 	if e.number("location.hash.length") != 0 {
 		t.Error("the key stays in the address")
 	}
-	e.do("choose a night", chromedp.Focus("#ribbon"), chromedp.KeyEvent("\ue011")) // Home
+	e.do("choose a night", chromedp.Focus("#ribbon"), chromedp.KeyEvent(kb.Home)) // Home
 	e.until("desk.night.night === '2027-03-08'")
 	e.do("the next night", chromedp.Click("#later"))
 	e.until("desk.night.night === '2027-03-09' && document.querySelector('#night-h').textContent.includes('2027-03-09')")
