@@ -17,6 +17,9 @@ type Account struct {
 	Before float64
 	// Alone is the part of Before in which the rule is broken, whatever else is.
 	Alone [ReasonCount]float64
+	// Only is the part of Before in which the rule is broken and no other: what
+	// would open without it.
+	Only [ReasonCount]float64
 	// InOrder is the part of Before that falls to the rule when the rules are
 	// gone through in the order of Reasons: with Usable they add up to Before.
 	InOrder [ReasonCount]float64
@@ -53,6 +56,7 @@ func (a *Accounts) Of(field, demand int) *Account { return &a.rows[int(a.first[f
 type tally struct {
 	before, usable int32
 	alone, inOrder [ReasonCount]int32
+	only           [ReasonCount]int32
 }
 
 // NewAccounts samples some fields (by id; nil: all of them) every step seconds
@@ -98,6 +102,7 @@ func NewAccounts(ctx context.Context, sv *survey.Survey, sky *visibility.Sky, ca
 			for k := range ReasonCount {
 				r.Alone[k] += float64(c[i].alone[k]) * h
 				r.InOrder[k] += float64(c[i].inOrder[k]) * h
+				r.Only[k] += float64(c[i].only[k]) * h
 			}
 		}
 	}
@@ -188,6 +193,9 @@ func (t *tally) add(why Reasons) {
 		return
 	}
 	t.inOrder[bits.TrailingZeros16(uint16(why))]++
+	if why&(why-1) == 0 {
+		t.only[bits.TrailingZeros16(uint16(why))]++
+	}
 	for w := why; w != 0; w &= w - 1 {
 		t.alone[bits.TrailingZeros16(uint16(w))]++
 	}

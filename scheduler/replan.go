@@ -63,11 +63,11 @@ type Tally struct {
 
 // FrontierPoint says what one stability would have won and moved.
 type FrontierPoint struct {
-	Stability float64
-	Coverage  float64
-	WonC      float64
-	Moved     int // dropped ones among them
-	New       int
+	Stability float64 `json:"stability"`
+	Coverage  float64 `json:"coverage"`
+	WonC      float64 `json:"credit_won"`
+	Moved     int     `json:"visits_moved"` // dropped ones among them
+	New       int     `json:"visits_new"`
 }
 
 // frontierSteps are the stabilities of a frontier.

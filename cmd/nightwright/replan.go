@@ -120,9 +120,10 @@ const listed = 12
 // replan tells what became of the plan: the verdict first.
 func (p *printer) replan(s *work.Survey, r *work.ReplanResult) {
 	m, x := &r.Tables.Summary, r.Tables.Summary.Replan
-	p.line("%s: planned again from %s, %s", p.bold(m.Survey), x.Now, p.green("every visit passed the audit"))
+	p.line("%s: planned again, %s", p.bold(m.Survey), p.green("every visit passed the audit"))
 	p.line("")
-	p.line("  coverage %.4f   (the earlier plan %.4f; before anything was won back %.4f)", m.Coverage, r.Earlier.Coverage, x.Before)
+	p.line("  from     %s on", x.Now)
+	p.line("  coverage %.4f   earlier %.4f   of that could stay %.4f", m.Coverage, r.Earlier.Coverage, x.Before)
 	p.line("  ceiling  %.4f   gap %s   with the hold kept %.4f", m.Ceiling, percent(m.Gap, 1), x.CeilingHeld)
 	p.line("  lost     %s, worth %.5f", count(x.VisitsLost, "visit"), x.CreditLost)
 	won := "-"
@@ -145,7 +146,7 @@ func (p *printer) replan(s *work.Survey, r *work.ReplanResult) {
 	p.heldLost(r.HeldLost)
 	p.frontier(r.Frontier)
 	p.line("")
-	p.line("The plan is in %s; changes.parquet there has every change. Next:", r.Folder)
+	p.line("The plan is in %s, each change in its changes.parquet. Next:", r.Folder)
 	if v := firstPlanned(r.Tables.Visits); v != nil {
 		p.line("  nightwright sheet %s %s --telescope %s --night %s", quote(s.Path), quote(r.Folder), quote(v.Telescope), tables.Date(v.Night))
 	}

@@ -75,7 +75,7 @@ func (a *app) root() *cobra.Command {
 	}
 	for _, c := range []*cobra.Command{
 		a.demoCommand(), a.newCommand(), a.fieldsCommand(), a.checkCommand(), a.almanacCommand(), a.gridCommand(),
-		a.planCommand(), a.replanCommand(), a.auditCommand(), a.sheetCommand(), a.recordCommand(), a.loseCommand(), a.ledgerCommand(), a.reportCommand(), a.exportCommand(), a.serveCommand(),
+		a.planCommand(), a.replanCommand(), a.auditCommand(), a.sheetCommand(), a.explainCommand(), a.recordCommand(), a.loseCommand(), a.ledgerCommand(), a.reportCommand(), a.exportCommand(), a.serveCommand(),
 		a.weatherCommand(), a.forecastCommand(), a.compareCommand(), a.gatherCommand(),
 		a.completionCommand(), a.manualCommand(),
 	} {
