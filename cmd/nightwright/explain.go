@@ -16,11 +16,11 @@ func (a *app) explainCommand() *cobra.Command {
 	var telescope, night string
 	c := a.command("explain SURVEY PLAN FIELD", 1, &cobra.Command{
 		Short: "why a field is where it is in a plan, or isn't; or why a night looks as it does",
-		Long: `Tells of a field how many hours it has before and after each rule, month by month;
-the visits it has; for each demand that lacks some, the best windows and why none
-of its visits is there: what stands there and its worth, the field's own visits
-too near, or the price of the hour against the visit's worth; and what would help
-most. Worths and prices are in millionths of coverage.
+		Long: `Tells of a field how many hours it has before and after each rule, month by
+month; the visits it has; for each demand that lacks some, the best windows and
+why none of its visits is there: what stands there and its worth, its own visits
+too near, or the price of the hour against the visit's worth; and what would
+help most. Worths and prices are in millionths of coverage.
 
 With --night and --telescope in place of FIELD it tells of a telescope's night
 what shuts it, how its time is spent, which visits would be the first to go, and
