@@ -32,7 +32,8 @@ type page struct {
 	Forecast            []string
 	Chances             [][]string
 	NetworkRows         [][]string
-	NetworkLead         string
+	NetworkLead, Replan string
+	Gap                 [][]string
 	Ways, Worths        [][]string
 	Origin              []fact
 	Files               [][]string
@@ -104,6 +105,13 @@ func (m *page) head(in *Input, g *gathered) {
 		{"Fields finished", whole(s.FieldsFinished), "of " + whole(s.FieldsWanted)},
 		{"Hours used", hours(s.Hours.Used), "of " + hours(s.Hours.Open) + " open (" + part(s.Hours.Used, s.Hours.Open) + "); dark " + hours(s.Hours.Dark)},
 	}
+	if s.Expected > 0 {
+		m.Facts = append(m.Facts, fact{"Expected ceiling", decimals4(s.Expected), "no way of acting exceeds it on average, under the expected weather"})
+	}
+	m.replanned(s.Replan)
+	for _, g := range s.GapParts {
+		m.Gap = append(m.Gap, []string{gapWords[g.Name], decimals4(g.Coverage), part(g.Coverage, s.Ceiling-s.Coverage)})
+	}
 	if s.Status != "steps_done" {
 		m.Warnings = append(m.Warnings, "The search was cut short ("+s.Status+"): a longer one may do better.")
 	}
@@ -123,6 +131,26 @@ func (m *page) head(in *Input, g *gathered) {
 	m.short(in)
 	m.origin(in)
 	m.outside(in)
+}
+
+// gapWords says what the parts of the gap are.
+var gapWords = map[string]string{
+	"slews":          "slews longer than a readout",
+	"filter_changes": "filter changes",
+	"idle":           "idle time",
+	"moment":         "better moments in the visits' own nights",
+	"choice":         "other nights and fields, what the search missed, and how far the ceiling is too high",
+}
+
+// replanned tells of a plan that came out of an earlier one.
+func (m *page) replanned(r *tables.Replan) {
+	if r == nil {
+		return
+	}
+	m.Replan = fmt.Sprintf("This is a re-plan from %s on: of what was planned %s visits are done, %s kept (%s of them held), %s moved, %s dropped to make room and %s lost; %s are new. What was lost was worth %s of coverage, %s was won back.",
+		r.Now, whole(int64(r.VisitsDone)), whole(int64(r.VisitsKept)), whole(int64(r.VisitsHeld)), whole(int64(r.VisitsMoved)), whole(int64(r.VisitsDropped)), whole(int64(r.VisitsLost)), whole(int64(r.VisitsNew)),
+		decimals4(r.CreditLost), decimals4(r.CreditWon))
+	m.Facts = append(m.Facts, fact{"Ceiling with the hold", decimals4(r.CeilingHeld), "of all plans that keep what is held, too"})
 }
 
 // limits says what keeps the plan from covering more.
@@ -210,7 +238,7 @@ func (m *page) origin(in *Input) {
 	s := &in.Tables.Summary
 	m.Origin = []fact{
 		{"Made by", "nightwright " + s.Program, ""},
-		{"Command", fmt.Sprintf("nightwright plan SURVEY --effort %s --seed %d", s.Effort, s.Seed), ""},
+		{"Command", command(s), ""},
 		{"Search", s.Status, ""},
 		{"plan.json", in.PlanSum, ""},
 	}
@@ -220,6 +248,18 @@ func (m *page) origin(in *Input) {
 	for _, t := range s.Tables {
 		m.Files = append(m.Files, []string{t.Name, whole(t.Bytes), t.SHA256})
 	}
+}
+
+// command is what makes the plan again.
+func command(s *tables.Summary) string {
+	if r := s.Replan; r != nil {
+		return fmt.Sprintf("nightwright replan SURVEY PLAN --now %s --hold %gh --stability %g (PLAN: plan.json with SHA-256 %s)", r.Now, r.HoldHours, r.Stability, r.From)
+	}
+	text := fmt.Sprintf("nightwright plan SURVEY --effort %s --seed %d", s.Effort, s.Seed)
+	if s.Expected > 0 {
+		text += " --weather expected"
+	}
+	return text
 }
 
 // outside fills in what other jobs found out.

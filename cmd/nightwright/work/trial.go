@@ -17,7 +17,8 @@ type Trial struct {
 	Losses []LoseAsk
 	Before *tables.PlanTables
 	After  *tables.PlanTables
-	Now    string // the instant before which nothing was planned
+	Now    string  // the instant before which nothing was planned
+	Survey *Survey // the copy, with the losses
 
 	dir    string // the copy
 	folder string // where the plan stands that it would replace
@@ -62,6 +63,7 @@ func TryLosses(ctx context.Context, survey string, ask TrialAsk, o Options) (_ *
 	if err != nil {
 		return nil, err
 	}
+	t.Survey = c
 	for _, loss := range ask.Losses {
 		if _, _, err := Lose(ctx, c, loss, o); err != nil {
 			return nil, err

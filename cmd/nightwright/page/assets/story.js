@@ -70,10 +70,9 @@ export class Story {
       button.disabled = true;
       button.textContent = "looking";
       try {
-        const e = await get("/api/explain", { name });
-        out.replaceChildren(el("pre", {}, e.text));
+        out.replaceChildren(...reasons(await get("/api/explain", { name, ...this.on.query() })));
       } catch (e) { out.replaceChildren(el("p", { class: "soft" }, e.message)); }
-    } }, "Why is it where it is?");
+    } }, "Why is it where it is, or isn't?");
     out.append(button);
     return out;
   }
@@ -85,4 +84,31 @@ export class Story {
     ]), [4, 5]));
     return el("div", { class: "scroll tall", tabindex: 0, role: "region", "aria-label": "Visits of the field" }, t);
   }
+}
+
+const day = (n) => new Date(n * 86400000).toISOString().slice(0, 10);
+const worth = (x) => (x * 1e6).toPrecision(3);
+const why = {
+  over: "it is over", cadence: "too near to a visit that the field has", taken: "visits stand there that are worth more", price: "its time is worth more than the visit",
+  possible: "what stands there is worth less, but moving it moves more", empty: "nothing stands there: the search passed it by",
+};
+
+// reasons writes what the explanation of a field says.
+function reasons(e) {
+  return e.demands.flatMap((d) => {
+    const rules = (d.rules ?? []).slice(0, 5), windows = (d.windows ?? []).slice(0, 6), helps = d.helps ?? [], months = d.months ?? [];
+    const put = (head, rows, numeric) => { const t = el("table"); t.append(...table(head, rows, numeric)); return el("div", { class: "scroll", tabindex: 0, role: "region", "aria-label": head[0] }, t); };
+    return [
+      el("h3", {}, `${d.name}: ${d.got} of ${d.wanted} visits`),
+      el("p", { class: "soft" }, `A visit of full quality is worth ${worth(d.worth)} millionths of coverage.`),
+      months.length ? put(["month", "dark and up, h", "by all rules, h"], months.map((m) => [m.name, fixed(m.before_h, 1), fixed(m.after_h, 1)]), [1, 2]) : null,
+      rules.length ? put(["rule", "takes in turn, h", "alone in the way, h"], rules.map((r) => [r.rule, fixed(r.in_turn_h, 1), fixed(r.only_h, 1)]), [1, 2]) : null,
+      windows.length ? put(["could have been", "worth", "costs", "why not"], windows.map((w) => [
+        `${w.telescope} ${day(w.night_days)} ${clock(w.from_unix_s)}-${clock(w.to_unix_s)}`, worth(w.worth), worth(w.price),
+        (why[w.why] ?? w.why) + ((w.rivals ?? []).length ? `: ${w.rivals.slice(0, 3).map((r) => r.field).join(", ")}` : ""),
+      ]), [1, 2]) : null,
+      helps.length ? el("p", {}, "What would help:") : null,
+      helps.length ? el("ul", {}, ...helps.map((h) => el("li", {}, h.what + (h.hours ? ` (opens ${fixed(h.hours, 1)} h)` : "")))) : null,
+    ].filter(Boolean);
+  });
 }
