@@ -301,3 +301,48 @@ func getReport(s *Server, w http.ResponseWriter, r *http.Request) error {
 	send(w, r, "text/html; charset=utf-8", text)
 	return nil
 }
+
+// explained returns the survey and the plan that an explanation is about; the
+// lost time is that which the plan knew of.
+func (s *Server) explained(r *http.Request) (*work.Survey, *tables.PlanTables, error) {
+	if r.URL.Query().Get("plan") == "trial" {
+		s.tryMu.Lock()
+		defer s.tryMu.Unlock()
+		if s.try == nil {
+			return nil, nil, noTrial
+		}
+		return s.try.trial.Survey, s.try.view.plan, nil
+	}
+	v, err := s.pick(r)
+	if err != nil {
+		return nil, nil, err
+	}
+	sv, err := s.books.sheets(r.Context(), v)
+	return sv, v.plan, err
+}
+
+// getExplain says why a field is where it is, or isn't.
+func getExplain(s *Server, w http.ResponseWriter, r *http.Request) error {
+	sv, plan, err := s.explained(r)
+	if err != nil {
+		return err
+	}
+	f, err := work.ExplainField(r.Context(), sv, plan, r.URL.Query().Get("name"), work.Options{Workers: s.cfg.Workers})
+	if err != nil {
+		return err
+	}
+	return sendJSON(w, r, f)
+}
+
+// getExplainNight says why a telescope's night looks as it does.
+func getExplainNight(s *Server, w http.ResponseWriter, r *http.Request) error {
+	sv, plan, err := s.explained(r)
+	if err != nil {
+		return err
+	}
+	n, err := work.ExplainNight(r.Context(), sv, plan, r.URL.Query().Get("telescope"), r.PathValue("night"), work.Options{Workers: s.cfg.Workers})
+	if err != nil {
+		return err
+	}
+	return sendJSON(w, r, n)
+}

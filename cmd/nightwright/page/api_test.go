@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"nightwright/constraints"
+	"nightwright/scheduler/explain"
 	"nightwright/visibility"
 )
 
@@ -89,6 +90,30 @@ func TestSheets(t *testing.T) {
 	}
 	if code, _, text := d.ask("GET", "/sheet?telescope=Q9&night=2027-03-09", ""); code != 422 || !strings.Contains(text, "there is no telescope") {
 		t.Errorf("no such telescope: %d %s", code, text)
+	}
+}
+
+// TestExplanations: the page's reasons are those of the command, of the plan
+// that holds and of the one on trial.
+func TestExplanations(t *testing.T) {
+	d := newDesk(t)
+	var f explain.Field
+	d.get("/api/explain?name=A1", &f)
+	if f.Name != "A1" || len(f.Demands) == 0 || f.Got != len(f.Visits) || len(f.Demands[0].Months) == 0 {
+		t.Errorf("%+v", f)
+	}
+	var n explain.Night
+	d.get("/api/explain/2027-03-09?telescope=C1", &n)
+	if code, _, text := d.ask("GET", "/api/explain?name=nobody", ""); code != 422 || !strings.Contains(text, "there is no field") {
+		t.Errorf("no such field: %d %s", code, text)
+	}
+	if code, _, _ := d.ask("GET", "/api/explain?name=A1&plan=trial", ""); code != 404 {
+		t.Errorf("without a trial: %d", code)
+	}
+	d.run(`{"losses":[{"site":"Cinder Ridge","from":"2027-03-08","to":"2027-03-11","cause":"technical"},{"site":"Salt Mesa","from":"2027-03-08","to":"2027-03-11","cause":"technical"}]}`)
+	d.get("/api/explain?name=A1&plan=trial", &f)
+	if f.Got != 0 || len(f.Demands[0].Rules) == 0 {
+		t.Errorf("on trial, with every night lost: %+v", f)
 	}
 }
 

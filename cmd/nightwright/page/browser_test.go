@@ -151,6 +151,8 @@ func TestPlannersDay(t *testing.T) {
 	y := e.number("(r => r.top + r.height / 2)(document.querySelector('#lanes [data-field]').getBoundingClientRect())")
 	e.do("click an exposure", chromedp.MouseClickXY(x, y))
 	e.until("document.querySelector('#story-text b')?.textContent.includes('visits')")
+	e.js("document.querySelector('#story-text button').click()")
+	e.until("document.querySelector('#story-text h3')?.textContent.includes('visits')")
 	e.keep("story")
 
 	// Drag a loss over most of the lane, plan again.

@@ -13,6 +13,8 @@ func routes() []route {
 		{"GET", "/api/nights/{night}", "One night: exposures, open and lost time of each telescope, Sun and Moon, and where the fields are", []param{whichPlan}, "", js, false, getNight},
 		{"GET", "/api/fields", "All fields with what they get", []param{whichPlan}, "", js, false, getFields},
 		{"GET", "/api/field", "One field's story: its visits, and what limits it", []param{{"name", "the field's name", true}, whichPlan}, "", js, false, getField},
+		{"GET", "/api/explain", "Why a field is where it is, or isn't", []param{{"name", "the field's name", true}, whichPlan}, "", js, false, getExplain},
+		{"GET", "/api/explain/{night}", "Why a telescope's night looks as it does", []param{{"telescope", "its name", true}, whichPlan}, "", js, false, getExplainNight},
 		{"GET", "/api/jobs/{id}", "How far long work is", nil, "", js, false, jobOf},
 		{"GET", "/api/jobs/{id}/events", "The same as server-sent events, until the work ends", nil, "", "text/event-stream", false, jobEvents},
 		{"DELETE", "/api/jobs/{id}", "Cancel long work", nil, "", js, true, cancelJob},
