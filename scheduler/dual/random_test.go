@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"nightwright/scheduler"
+	"nightwright/scheduler/audit"
 	"nightwright/scheduler/dual"
 	"nightwright/scheduler/model"
 	"nightwright/scheduler/trial"
@@ -141,8 +142,12 @@ func (c *counts) bound(t *testing.T, k *trial.Kit, list []model.Exposure, covera
 // judge allows, to the microsecond, and keeps what earns at least as much.
 func (c *counts) push(t *testing.T, k *trial.Kit, list []model.Exposure, coverage float64, r *rand.Rand) ([]model.Exposure, float64) {
 	t.Helper()
+	j, err := audit.NewJudge(t.Context(), k.Survey, k.Exact, nil, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
 	judge := func(try []model.Exposure) (float64, bool) {
-		rep, err := k.Check(t.Context(), try)
+		rep, err := j.Check(t.Context(), audit.Plan{Visits: trial.Rows(k.Survey, try), LegalityOnly: true})
 		if err != nil {
 			t.Fatal(err)
 		}
