@@ -2,13 +2,14 @@ package scheduler
 
 import (
 	"fmt"
+	"slices"
 
+	"nightwright/scheduler/dual"
 	"nightwright/scheduler/model"
 )
 
 // shares works out each program's part of the scaled exposure time, planned and
-// given, and
-// whether its bounds hold to within one visit.
+// given, and whether its bounds hold to within one visit.
 func shares(p *model.Problem, plan *model.Plan) []model.ShareOutcome {
 	sv := p.Survey
 	time := make([]float64, len(sv.Programs))
@@ -46,4 +47,33 @@ func shares(p *model.Problem, plan *model.Plan) []model.ShareOutcome {
 		out[i] = o
 	}
 	return out
+}
+
+// missed reports whether some share is out of its bounds.
+func missed(told []model.ShareOutcome) bool {
+	return slices.ContainsFunc(told, func(s model.ShareOutcome) bool { return s.Breach > 0 })
+}
+
+// relaxedCeiling bounds the plans that keep share bounds as far as a plan does
+// that misses some. The multipliers of those were sought for a bound out of
+// reach and are too great: each part of them gives a ceiling, and the least
+// counts. The relaxation is convex along the way, so the search ends where it
+// rises again.
+func (c *conductor) relaxedCeiling(ascent *dual.Ascent, kept dual.Kept, told []model.ShareOutcome) float64 {
+	best := 1.0
+	for i, part := range []float64{0, 0.1, 0.3, 0.6, 1} {
+		ascent.Restore(kept)
+		for _, s := range told {
+			if s.Breach > 0 {
+				ascent.Relax(int(s.Program), s.Share)
+				ascent.Damp(int(s.Program), part)
+			}
+		}
+		b := ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)
+		if i > 0 && b > best {
+			break
+		}
+		best = min(best, b)
+	}
+	return best
 }

@@ -104,7 +104,7 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	c.report(model.Progress{Phase: "ceiling"})
 	ceiling := ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)
 	c.report(model.Progress{Phase: "ceiling", Done: 1, Total: 1, Ceiling: ceiling})
-	prices, kept, relaxed := ascent.Prices().List(), ascent.Keep(), false
+	prices, kept := ascent.Prices().List(), ascent.Keep()
 	ascent.Steer(c.prices, c.effort.soft, c.effort.steer, func(step, of int, _ float64) {
 		c.report(model.Progress{Phase: "steering", Done: step, Total: of, Ceiling: ceiling})
 	})
@@ -134,20 +134,8 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	}
 	plan := s.Plan()
 	told := shares(c.p, plan)
-	for i := range told {
-		if told[i].Breach == 0 {
-			continue
-		}
-		// A plan out of its share bounds is compared with plans that keep them
-		// as far as it does.
-		if !relaxed {
-			ascent.Restore(kept)
-		}
-		relaxed = true
-		ascent.Relax(int(told[i].Program), told[i].Share)
-	}
-	if relaxed {
-		ceiling = ascent.CeilingWithin(c.ctx, c.effort.ceilingBin)
+	if missed(told) {
+		ceiling = c.relaxedCeiling(ascent, kept, told)
 	}
 	anatomy := Dissect(c.p, plan, s.Coverage(), ceiling, prices)
 	return &model.Outcome{

@@ -108,10 +108,20 @@ func (s *shareState) slack(rates []float64) float64 {
 
 // Relax moves a program's share bounds out as far as a plan's share needs,
 // for a ceiling of the plans that keep them so far. The multipliers stay: any
-// give a bound.
+// give a bound, but those sought for a bound out of reach give a poor one; see
+// Damp.
 func (a *Ascent) Relax(program int, share float64) {
 	s := a.shares
 	s.min[program], s.max[program] = math.Min(s.min[program], share), math.Max(s.max[program], share)
+	s.rates(a.oracle.Share)
+}
+
+// Damp takes part of a program's share multipliers away: part 1 leaves them, 0
+// drops them.
+func (a *Ascent) Damp(program int, part float64) {
+	s := a.shares
+	s.low[program] *= part
+	s.high[program] *= part
 	s.rates(a.oracle.Share)
 }
 

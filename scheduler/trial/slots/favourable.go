@@ -72,20 +72,20 @@ func (a *ask) inCells(sky *skyline, w *model.Want, step int, t int32, n int) []c
 // Where the Moon stays up or down, quality bends by less than 2e-8 a second
 // squared at the altitudes that the surveys here allow, so it rises over two
 // samples by less than h^2/8 times that, 9e-6. Where the Moon rises or sets it
-// jumps, and what follows the jump falls by less than 2e-4 a second (airmass at
+// jumps, and on either side of the jump it changes by less than 2e-4 a second (airmass at
 // 20 deg changes by 6e-4 a second, which takes 8e-5; from memory, on the airmass'
 // derivative).
 func (a *ask) most(sky *skyline, w *model.Want, step int, t int32, from, to int64) float64 {
 	first := from / sampleStep
 	last := (to + sampleStep - 1) / sampleStep
-	top, upBefore := 0.0, false
+	top, before, upBefore := 0.0, 0.0, false
 	for k := first; k <= last; k++ {
 		q, up := sky.at(w.Field, w.Steps[step].Filter, a.p.Scopes[t].Site, k*sampleStep)
 		top = math.Max(top, q)
 		if k > first && up != upBefore {
-			top = math.Max(top, q+0.012)
+			top = math.Max(top, math.Max(q, before)+0.012)
 		}
-		upBefore = up
+		before, upBefore = q, up
 	}
 	return math.Min(1, top+1e-5)
 }

@@ -1,6 +1,7 @@
 package slots_test
 
 import (
+	"fmt"
 	"math"
 	"os"
 	"os/exec"
@@ -67,7 +68,8 @@ func TestExactOptima(t *testing.T) {
 	var n, planSum, ceilingSum float64
 	leastPlan, mostCeiling := math.Inf(1), 0.0
 	for seed := range last {
-		plan, ceiling, r, u := exact(t, seed)
+		var plan, ceiling, r, u float64
+		t.Run(fmt.Sprint(seed), func(t *testing.T) { plan, ceiling, r, u = exact(t, seed) })
 		if r == 0 {
 			if plan > 0 {
 				t.Errorf("seed %d: the plan earns %g where the grid has nothing", seed, plan)
