@@ -29,6 +29,24 @@ func BenchmarkSeason(b *testing.B) {
 	}
 }
 
+// BenchmarkHeadline plays one season of the season starter (6 sites x 182 nights
+// x 6,000 fields) on one core, without re-solving.
+func BenchmarkHeadline(b *testing.B) {
+	k := build(b, loaded(b, "season"))
+	for _, policy := range []Policy{Densest, FixedPrices} {
+		b.Run(policy.String(), func(b *testing.B) {
+			pl := NewTroupe(k.Stage, Cast{Policy: policy}).player()
+			season := 0
+			for b.Loop() {
+				if o := pl.Play(1, season); o.Visits == 0 {
+					b.Fatal("nothing was observed")
+				}
+				season++
+			}
+		})
+	}
+}
+
 // TestMemoryStays: a hundred seasons more take no memory more.
 func TestMemoryStays(t *testing.T) {
 	k := build(t, small())

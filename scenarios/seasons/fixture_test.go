@@ -60,7 +60,15 @@ var small = sync.OnceValue(func() *survey.Survey { return cloudy(starter.Family(
 // and a finish bonus, cut to some nights.
 func demo(t testing.TB, nights int) *survey.Survey {
 	t.Helper()
-	files, err := starter.Files("demo", 0)
+	sv := loaded(t, "demo")
+	sv.LastNight = sv.FirstNight + survey.Day(nights-1)
+	return sv
+}
+
+// loaded is a starter survey.
+func loaded(t testing.TB, like string) *survey.Survey {
+	t.Helper()
+	files, err := starter.Files(like, 0)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -74,7 +82,6 @@ func demo(t testing.TB, nights int) *survey.Survey {
 	if sv == nil {
 		t.Fatal(issues)
 	}
-	sv.LastNight = sv.FirstNight + survey.Day(nights-1)
 	return sv
 }
 

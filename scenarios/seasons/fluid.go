@@ -155,6 +155,17 @@ func (f *fluid) choose(n0 int, loads bool) {
 	}
 }
 
+// renew sets the multipliers of wants for nights from n0 on: of those that had
+// a visit since, and of a quarter of the others each evening; between two
+// evenings the worth of what is left hardly changes.
+func (f *fluid) renew(n0 int, visited func(w int) bool) {
+	for w := range f.left {
+		if f.left[w] > 0 && ((w+n0)%4 == 0 || visited(w)) {
+			f.mu[w] = f.multiplier(w, n0)
+		}
+	}
+}
+
 // multiplier finds mu such that the nights worth more than mu hold, by their
 // chances, as many visits as are left; 0 when all of them hold fewer. It
 // leaves the picked nights in take.
@@ -208,13 +219,17 @@ func (f *fluid) pick(w, n0 int, mu float64) float64 {
 			g = (float64(row[n]) - mu) * float64(odds[n])
 		}
 		f.gain[n] = g + best[min(n+spread, nights)]
-		best[n] = math.Max(best[n+1], f.gain[n])
+		best[n] = max(best[n+1], f.gain[n])
 	}
 	for n := n0; n < nights; {
 		f.take[n] = false
 		if float64(row[n]) > mu && f.gain[n] >= best[n+1] {
 			f.take[n] = true
-			sum += 1 - math.Pow(1-float64(odds[n]), float64(spread))
+			closed := 1.0
+			for range spread {
+				closed *= 1 - float64(odds[n])
+			}
+			sum += 1 - closed
 			for k := n + 1; k < min(n+spread, nights); k++ {
 				f.take[k] = false
 			}
@@ -243,9 +258,9 @@ func (f *fluid) step(n0 int, eta, memory float64) {
 				if c <= 0 {
 					continue
 				}
-				x := math.Max(-1, math.Min(1.5, (f.load[b]-c)/c))
+				x := max(-1, min(1.5, (f.load[b]-c)/c))
 				f.drift[b] = memory*f.drift[b] + (1-memory)*x
-				f.price[b] = math.Max(0, f.price[b]+eta*st.rate*f.drift[b])
+				f.price[b] = max(0, f.price[b]+eta*st.rate*f.drift[b])
 			}
 		}
 	}

@@ -336,8 +336,10 @@ func (pl *Player) evening(label int32, at int64) {
 		}
 		pl.f.know(hourOf(at), func(site int) bool { return pl.sky.Open(site, hourOf(at)) })
 		pl.f.again(n)
+		pl.f.choose(min(n+1, p.Nights), false)
+		return
 	}
-	pl.f.choose(min(n+1, p.Nights), false)
+	pl.f.renew(min(n+1, p.Nights), func(w int) bool { return pl.nightOf[w] >= label-1 })
 }
 
 // press makes the programs that are over their share worth less, and those

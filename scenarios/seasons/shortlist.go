@@ -1,8 +1,6 @@
 package seasons
 
 import (
-	"math"
-
 	"nightwright/constraints/survey"
 	"nightwright/scheduler/model"
 	"nightwright/visibility"
@@ -118,7 +116,7 @@ func (pl *Player) candidates(s *scope, block int32) {
 			for b := block + 1; b <= int32(o.to); b++ {
 				k := sn.block + b
 				x := c.value*mean*float64(pl.st.qualities[o.at+b-int32(o.from)]) - f.price[k]*busy - c.reserve
-				later = math.Max(later, x*pl.staysOpen(s, k, b-block))
+				later = max(later, x*pl.staysOpen(s, k, b-block))
 			}
 			c.reserve = trust * (c.reserve + later)
 		}

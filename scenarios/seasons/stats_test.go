@@ -45,36 +45,6 @@ func TestQuantile(t *testing.T) {
 	near(t, "p100", Quantile(x, 1), 4, 0)
 }
 
-// TestIntervalsHoldTheTruth: 1,000 forecasts of 30 seasons each of a thing
-// whose mean is known; the 95 % interval must hold it in 93 to 97 % of them
-// (the binomial's own four standard errors are 2.8 %). The values are means of
-// many hours of a two-state sky, which is what a season's lost time is.
-func TestIntervalsHoldTheTruth(t *testing.T) {
-	const repeats, seasons, hours, p, r = 1000, 30, 300, 0.6, 0.93
-	rg := rand.New(rand.NewPCG(4, 1))
-	held := 0
-	for range repeats {
-		x := make([]float64, seasons)
-		for k := range x {
-			open := rg.Float64() < p
-			for range hours {
-				if rg.Float64() >= r {
-					open = rg.Float64() < p
-				}
-				if open {
-					x[k] += 1.0 / hours
-				}
-			}
-		}
-		if i := MeanInterval(x); i.Low <= p && p <= i.High {
-			held++
-		}
-	}
-	if held < 930 || held > 970 {
-		t.Errorf("%d of %d intervals hold the mean; want 930 to 970", held, repeats)
-	}
-}
-
 // TestShapleyByHand is a game of three sites worked on paper, the glove game
 // of Shapley & Shubik (1969) in another dress: a site in the north (1) makes a
 // network with either of two in the south (2, 3), worth 1. Of the six orders
