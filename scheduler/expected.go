@@ -98,10 +98,19 @@ func (b *bounder) run(p *model.Problem, a *dual.Ascent, what string) float64 {
 	return a.CeilingWithin(b.ctx, b.effort.ceilingBin)
 }
 
+// taken is the problem with what was done taken in.
+func taken(ctx context.Context, in Input) (*model.Problem, error) {
+	p, err := problem(ctx, in)
+	if err == nil && in.Past != nil {
+		p = p.Take(in.Past.given(p))
+	}
+	return p, err
+}
+
 // clear is the ceiling of plans under clear skies that keep the share bounds
 // as far as this one does.
 func (b *bounder) clear(in Input, told []model.ShareOutcome) (float64, error) {
-	p, err := model.NewProblem(in.Survey, in.Sky, in.Calendar, in.Windows, in.Workers)
+	p, err := taken(b.ctx, in)
 	if err != nil {
 		return 0, err
 	}
@@ -125,7 +134,8 @@ func (b *bounder) expected(in Input, w Weather) (float64, []model.Price, error) 
 	for i := range free.Programs {
 		free.Programs[i].ShareMin, free.Programs[i].ShareMax = 0, 1
 	}
-	p, err := model.NewProblem(&free, in.Sky, w.Calendar(&free), in.Windows, in.Workers)
+	in.Survey, in.Calendar = &free, w.Calendar(&free)
+	p, err := taken(b.ctx, in)
 	if err != nil {
 		return 0, nil, err
 	}

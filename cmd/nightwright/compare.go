@@ -47,7 +47,7 @@ best site K times and tells how far from the best set that may be.`,
 		if err != nil {
 			return err
 		}
-		if greed != nil && !a.asJSON {
+		if greed != nil && !a.asJSON && !f.asCSV {
 			a.endProgress()
 			p := a.printer()
 			p.greed(greed)
@@ -55,7 +55,7 @@ best site K times and tells how far from the best set that may be.`,
 				return err
 			}
 		}
-		return a.seasonsDone(r, nil)
+		return a.seasonsDone(r, nil, f.asCSV)
 	})
 	f.add(c.Flags(), 50)
 	c.Flags().IntVar(&choose, "choose", 0, "choose `K` of the survey's sites")

@@ -17,6 +17,7 @@ type seasonsFlags struct {
 	submit string
 	shards int
 	sbatch string
+	asCSV  bool
 }
 
 func (f *seasonsFlags) add(flags *pflag.FlagSet, seasons int) {
@@ -24,6 +25,7 @@ func (f *seasonsFlags) add(flags *pflag.FlagSet, seasons int) {
 	flags.Uint64Var(&f.seed, "seed", 0, "seed `N` of the skies (default: the survey's)")
 	flags.StringVar(&f.ask.Shard, "shard", "", "simulate only part `K/N` of the seasons, into a file of its own in --out")
 	flags.StringVar(&f.ask.Out, "out", "", "write the results to `FOLDER`")
+	flags.BoolVar(&f.asCSV, "csv", false, "write the main table as CSV on stdout instead of the summary")
 	flags.IntVar(&f.shards, "shards", 16, "with --submit: cut the seasons into `N` shards")
 	flags.StringVar(&f.sbatch, "sbatch", "", "with --submit: more `OPTIONS` of sbatch, such as '--time=2:00:00 --partition=day'")
 	flags.StringVar(&f.submit, "submit", "", "run the shards as an array job, `HOW`: slurm submits it, script prints the script")
@@ -80,7 +82,7 @@ them, to the same bytes. A part that stands there already is left as it is.`,
 		if err != nil {
 			return err
 		}
-		return a.seasonsDone(r, &pt.Summary)
+		return a.seasonsDone(r, &pt.Summary, f.asCSV)
 	})
 	f.add(c.Flags(), 100)
 	c.Flags().StringVar(&policies, "policies", "planned,fixed,resolved", "`WAYS` of acting, with commas")
@@ -108,6 +110,7 @@ func (a *app) noWeather(s *work.Survey) {
 
 func (a *app) gatherCommand() *cobra.Command {
 	var out string
+	var asCSV bool
 	c := a.command("gather DIR", 0, &cobra.Command{
 		Short: "join the shards of a forecast or a comparison",
 		Long: `Joins the parts that 'forecast --shard' or 'compare --shard' wrote into a
@@ -121,9 +124,10 @@ seasons are refused by name; nothing is written then.`,
 		if err != nil {
 			return err
 		}
-		return a.seasonsDone(r, nil)
+		return a.seasonsDone(r, nil, asCSV)
 	})
 	c.Flags().StringVar(&out, "out", "", "write the tables to `FOLDER` (default: beside the parts)")
+	c.Flags().BoolVar(&asCSV, "csv", false, "write the main table as CSV on stdout instead of the summary")
 	return c
 }
 

@@ -11,7 +11,7 @@ import (
 )
 
 // seasonsDone writes the result of a forecast, a comparison, or a part of one.
-func (a *app) seasonsDone(r *work.SeasonsResult, plan *tables.Summary) error {
+func (a *app) seasonsDone(r *work.SeasonsResult, plan *tables.Summary, asCSV bool) error {
 	a.endProgress()
 	if r.Part != "" {
 		return a.partDone(r)
@@ -21,6 +21,12 @@ func (a *app) seasonsDone(r *work.SeasonsResult, plan *tables.Summary) error {
 			return a.json(seasonsJSON{Folder: r.Folder, Result: r.Forecast.Summary})
 		}
 		return a.json(seasonsJSON{Folder: r.Folder, Result: compareJSON(r.Compare)})
+	}
+	switch {
+	case asCSV && r.Forecast != nil:
+		return tables.Seasons.WriteCSV(a.stdout, r.Forecast.Seasons)
+	case asCSV:
+		return tables.Networks.WriteCSV(a.stdout, r.Compare.Networks)
 	}
 	p := a.printer()
 	if r.Forecast != nil {

@@ -13,7 +13,7 @@ import (
 
 // own are the flags that a shard of a cluster job gets its own values of, or
 // that are of this call alone.
-var own = []string{"submit", "shards", "sbatch", "shard", "out", "workers", "quiet", "json", "help", "version"}
+var own = []string{"submit", "shards", "sbatch", "shard", "out", "workers", "quiet", "json", "csv", "help", "version"}
 
 // submit turns a command into an array job: printed, or handed to Slurm.
 func (a *app) submit(cmd *cobra.Command, args []string, f *seasonsFlags) error {

@@ -39,8 +39,8 @@ func newPlanned(st *Stage, list []model.Exposure) *planned {
 			}
 		}
 		k := int(e.Telescope)*p.Nights + int(e.Night)
-		if want < 0 || k < 0 || k >= len(l.nights) {
-			continue
+		if want < 0 || e.Night < 0 || int(e.Night) >= p.Nights {
+			continue // not of this season
 		}
 		l.nights[k] = append(l.nights[k], e)
 		l.wants[k] = append(l.wants[k], want)
