@@ -4,6 +4,7 @@ import (
 	"encoding/json"
 	"math"
 	"os"
+	"os/exec"
 	"path/filepath"
 	"strings"
 	"testing"
@@ -173,6 +174,42 @@ func TestDescription(t *testing.T) {
 		}
 		if rt.Body != "" && doc.Components.Schemas[rt.Body] == nil {
 			t.Errorf("%s %s: there is no schema %s", rt.Method, rt.Path, rt.Body)
+		}
+	}
+}
+
+// TestDescriptionIsOpenAPI holds the description against the schema of OpenAPI
+// 3.1 that its authors publish, by an outside validator (npm
+// @seriousme/openapi-schema-validator, pinned in .ci/node).
+func TestDescriptionIsOpenAPI(t *testing.T) {
+	absent := func(why string) {
+		if os.Getenv("NIGHTWRIGHT_REQUIRE_ALL") == "1" {
+			t.Fatalf("%s, and NIGHTWRIGHT_REQUIRE_ALL is 1", why)
+		}
+		t.Skip(why)
+	}
+	node, err := exec.LookPath("node")
+	if err != nil {
+		absent("node is not installed")
+	}
+	folder := os.Getenv("NIGHTWRIGHT_NODE")
+	if folder == "" {
+		folder = filepath.Join("..", "..", "..", ".ci", "node")
+	}
+	if _, err := os.Stat(filepath.Join(folder, "node_modules", "@seriousme", "openapi-schema-validator")); err != nil {
+		absent("the validator is not installed: run npm ci in .ci/node")
+	}
+	d := newDesk(t)
+	_, _, text := d.ask("GET", "/openapi.json", "")
+	for name, tt := range map[string]struct{ text, want string }{
+		"ours":     {text, "valid 3.1"},
+		"a faulty": {strings.Replace(text, `"in":"query"`, `"in":"nowhere"`, 1), "["},
+	} {
+		cmd := exec.CommandContext(t.Context(), node, filepath.Join("testdata", "openapi.mjs"), folder)
+		cmd.Stdin = strings.NewReader(tt.text)
+		out, err := cmd.CombinedOutput()
+		if err != nil || !strings.HasPrefix(string(out), tt.want) {
+			t.Errorf("%s: %v: %.2000s; want %q", name, err, out, tt.want)
 		}
 	}
 }

@@ -2,6 +2,7 @@ package page
 
 import (
 	"bufio"
+	"context"
 	"fmt"
 	"io"
 	"net"
@@ -177,6 +178,43 @@ func TestCrowd(t *testing.T) {
 	}
 	if code, _, text := d.ask("GET", "/api/survey", ""); code != 200 {
 		t.Errorf("after the crowd: %d, %s", code, text)
+	}
+}
+
+// TestSlowOnesAreLetGo: a head and a body that don't come are not waited for,
+// and the server ends when it is told to, with a stream open.
+func TestSlowOnesAreLetGo(t *testing.T) {
+	d := newDesk(t)
+	s, err := New(t.Context(), Config{Survey: d.dir, Workers: 1, Version: "test", Key: testKey, Now: time.Now, Wait: 50 * time.Millisecond})
+	if err != nil {
+		t.Fatal(err)
+	}
+	l, err := net.Listen("tcp", "127.0.0.1:0")
+	if err != nil {
+		t.Fatal(err)
+	}
+	ctx, stop := context.WithCancel(t.Context())
+	ended := make(chan error, 1)
+	go func() { ended <- s.Serve(ctx, l) }()
+	for what, text := range map[string]string{
+		"nothing":     "",
+		"half a head": "GET /api/survey HTTP/1.1\r\nHost: 127.0.0.1\r\nX-Slow: ",
+		"half a body": "POST /api/trial HTTP/1.1\r\nHost: 127.0.0.1\r\n" + KeyHeader + ": " + testKey + "\r\nContent-Type: application/json\r\nContent-Length: 500\r\n\r\n{",
+	} {
+		c, err := net.Dial("tcp", l.Addr().String())
+		if err != nil {
+			t.Fatal(err)
+		}
+		fmt.Fprint(c, text)
+		answer, err := io.ReadAll(c) // ends when the server lets go
+		if err != nil || strings.HasPrefix(string(answer), "HTTP/1.1 2") {
+			t.Errorf("%s: %v, %q", what, err, answer)
+		}
+		c.Close()
+	}
+	stop()
+	if err := <-ended; err != nil {
+		t.Errorf("the server ended with %v", err)
 	}
 }
 

@@ -31,6 +31,7 @@ type Config struct {
 	Key     string           // allows changes; "": none are
 	Hosts   []string         // names, besides this machine's own, by which it may be called
 	Now     func() time.Time // the clock
+	Wait    time.Duration    // how long a request's head may take, and a quarter of what its body may; 0: 5 s
 }
 
 // Server is the planning page.
@@ -102,7 +103,7 @@ func (s *Server) answer(w http.ResponseWriter, r *http.Request, do func() error)
 	var large *http.MaxBytesError
 	var status *statusError
 	switch {
-	case err == nil || r.Context().Err() != nil:
+	case err == nil:
 	case errors.As(err, &status):
 		refuse(w, status.code, status.what)
 	case errors.As(err, &large):
@@ -189,8 +190,12 @@ func readJSON(r *http.Request, v any) error {
 
 // Serve answers on a listener until the context ends.
 func (s *Server) Serve(ctx context.Context, l net.Listener) error {
+	wait := s.cfg.Wait
+	if wait == 0 {
+		wait = 5 * time.Second
+	}
 	srv := &http.Server{
-		Handler: s.Handler(), ReadHeaderTimeout: 5 * time.Second, ReadTimeout: 20 * time.Second, IdleTimeout: 60 * time.Second,
+		Handler: s.Handler(), ReadHeaderTimeout: wait, ReadTimeout: 4 * wait, IdleTimeout: 12 * wait,
 		MaxHeaderBytes: 16 << 10, BaseContext: func(net.Listener) context.Context { return ctx },
 	}
 	stop := context.AfterFunc(ctx, func() {

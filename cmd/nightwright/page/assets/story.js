@@ -101,8 +101,8 @@ function reasons(e) {
     return [
       el("h3", {}, `${d.name}: ${d.got} of ${d.wanted} visits`),
       el("p", { class: "soft" }, `A visit of full quality is worth ${worth(d.worth)} millionths of coverage.`),
-      months.length ? put(["month", "dark and up, h", "by all rules, h"], months.map((m) => [m.name, fixed(m.before_h, 1), fixed(m.after_h, 1)]), [1, 2]) : null,
-      rules.length ? put(["rule", "takes in turn, h", "alone in the way, h"], rules.map((r) => [r.rule, fixed(r.in_turn_h, 1), fixed(r.only_h, 1)]), [1, 2]) : null,
+      months.length ? put(["month", "dark and up, h", "usable, h"], months.map((m) => [m.name, fixed(m.before_h, 1), fixed(m.after_h, 1)]), [1, 2]) : null,
+      rules.length ? put(["rule", "takes, h", "it alone, h"], rules.map((r) => [r.rule, fixed(r.in_turn_h, 1), fixed(r.only_h, 1)]), [1, 2]) : null,
       windows.length ? put(["could have been", "worth", "costs", "why not"], windows.map((w) => [
         `${w.telescope} ${day(w.night_days)} ${clock(w.from_unix_s)}-${clock(w.to_unix_s)}`, worth(w.worth), worth(w.price),
         (why[w.why] ?? w.why) + ((w.rivals ?? []).length ? `: ${w.rivals.slice(0, 3).map((r) => r.field).join(", ")}` : ""),
