@@ -82,11 +82,17 @@ func (s *Survey) OpenWindows(ctx context.Context, o Options) error {
 		return err
 	}
 	o.tell("windows", 0, 1)
+	key := constraints.WindowsKey(s.Survey, s.Sky, s.Calendar)
+	if s.Windows = s.storedWindows(key, o); s.Windows != nil {
+		o.tell("windows", 1, 1)
+		return ctx.Err()
+	}
 	w, err := constraints.NewWindows(ctx, s.Survey, s.Sky, s.Calendar, o.Workers)
 	if err != nil {
 		return err
 	}
 	s.Windows = w
+	s.storeWindows(key)
 	o.tell("windows", 1, 1)
 	return ctx.Err()
 }
