@@ -117,6 +117,8 @@ func TestDuckDBReadsEveryTable(t *testing.T) {
 	cases := []duckCase{
 		duckCaseOf(t, Visits), duckCaseOf(t, Fields), duckCaseOf(t, Demands), duckCaseOf(t, Nights),
 		duckCaseOf(t, Prices), duckCaseOf(t, Changes), duckCaseOf(t, Grid), duckCaseOf(t, Almanac),
+		duckCaseOf(t, Parts), duckCaseOf(t, Seasons), duckCaseOf(t, Bands), duckCaseOf(t, Chances),
+		duckCaseOf(t, Networks), duckCaseOf(t, Pairs), duckCaseOf(t, Worths), duckCaseOf(t, Strengths),
 	}
 	dir := t.TempDir()
 	var files []string

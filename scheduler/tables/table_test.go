@@ -130,7 +130,8 @@ func drawInto(rt *rapid.T, v reflect.Value, name string) {
 }
 
 func kinds() []kind {
-	return []kind{kindOf(Visits), kindOf(Fields), kindOf(Demands), kindOf(Nights), kindOf(Prices), kindOf(Changes), kindOf(Grid), kindOf(Almanac)}
+	return []kind{kindOf(Visits), kindOf(Fields), kindOf(Demands), kindOf(Nights), kindOf(Prices), kindOf(Changes), kindOf(Grid), kindOf(Almanac),
+		kindOf(Parts), kindOf(Seasons), kindOf(Bands), kindOf(Chances), kindOf(Networks), kindOf(Pairs), kindOf(Worths), kindOf(Strengths)}
 }
 
 // TestSchemas holds the printed schemas against testdata/schemas.txt, which
