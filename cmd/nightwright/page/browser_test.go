@@ -18,6 +18,9 @@ import (
 // browser starts Chromium, with more of its options where they are given.
 func browser(t *testing.T, more ...chromedp.ExecAllocatorOption) context.Context {
 	t.Helper()
+	if testing.Short() { // the race detector gains nothing from a browser
+		t.Skip("-short")
+	}
 	path := ""
 	for _, name := range []string{"chromium", "chromium-browser", "google-chrome"} {
 		if p, err := exec.LookPath(name); err == nil {
