@@ -52,6 +52,7 @@ func bench() error {
 	flag.IntVar(&a.cut.nights, "nights", 0, "take only so many nights")
 	flag.IntVar(&a.cut.fields, "fields", 0, "take only so many fields")
 	flag.IntVar(&a.cut.sites, "sites", 0, "take only so many sites")
+	lost := flag.Int("replans", 0, "measure re-planning after so many lost site-nights instead")
 	profile := flag.String("cpuprofile", "", "file for a CPU profile")
 	flag.Parse()
 	if *profile != "" {
@@ -63,6 +64,16 @@ func bench() error {
 			return err
 		}
 		defer pprof.StopCPUProfile()
+	}
+	if *lost > 0 {
+		for _, name := range strings.Split(*families, ",") {
+			for seed := uint64(1); seed <= uint64(*seeds); seed++ {
+				if err := replans(name, seed, &a, *lost); err != nil {
+					return fmt.Errorf("%s: %w", name, err)
+				}
+			}
+		}
+		return nil
 	}
 	fmt.Println("The gap's parts are in points, hundredths of the ceiling: slews, filter changes, idle time, moment, choice.")
 	fmt.Println()

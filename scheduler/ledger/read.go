@@ -51,7 +51,7 @@ type reader struct {
 // columns, in any order:
 //
 //   - kind: done or lost. Rows of a night's sheet that still say planned, held,
-//     recorded or reserved are passed over. Without it the file holds exposures if
+//     recorded, reserved or reserve are passed over. Without it the file holds exposures if
 //     it has a column field, and lost time if it has a column cause.
 //   - Of exposures, by the names of the plan's visits table: field, telescope,
 //     start_utc, and end_utc or exposure_s; filter, program and demand where they

@@ -25,7 +25,7 @@ func (d *reader) wrong(want, what string, args ...any) { d.add(d.line, want, wha
 
 // sheetKinds stand in the column kind of a sheet where nothing was done yet,
 // or nothing new; such rows are passed over.
-var sheetKinds = []string{"planned", "held", "recorded", "reserved"}
+var sheetKinds = []string{"planned", "held", "recorded", "reserved", "reserve"}
 
 // row reads the present row.
 func (d *reader) row() {

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strconv"
 	"time"
 
@@ -32,11 +33,36 @@ func (s *Sheet) WriteCSV(w io.Writer) error {
 			return fmt.Errorf("sheet: %w", err)
 		}
 	}
+	for i := range s.Reserve {
+		if err := c.Write(s.spareRecord(&s.Reserve[i])); err != nil {
+			return fmt.Errorf("sheet: %w", err)
+		}
+	}
 	c.Flush()
 	if err := c.Error(); err != nil {
 		return fmt.Errorf("sheet: %w", err)
 	}
 	return nil
+}
+
+// spareRecord is a line of the reserve list: without times, which whoever takes it
+// fills in.
+func (s *Sheet) spareRecord(x *Spare) []string {
+	out := make([]string, len(csvColumns))
+	set := func(column, text string) { out[slices.Index(csvColumns, column)] = text }
+	instant := func(unix float64) string { return tables.Instant(int64(math.Round(unix * 1e6))) }
+	set("kind", "reserve")
+	set("telescope", s.Telescope)
+	set("site", s.Site)
+	set("field", x.Field)
+	set("demand", x.Demand)
+	set("filter", x.Filter)
+	set("program", x.Program)
+	set("note", fmt.Sprintf("start from %s to %s, best %s", instant(x.From), instant(x.To), instant(x.Best)))
+	set("ra_deg", tables.Float(x.RA))
+	set("dec_deg", tables.Float(x.Dec))
+	set("exposure_s", tables.Float(x.Exposure))
+	return out
 }
 
 func (s *Sheet) record(l *Line) []string {

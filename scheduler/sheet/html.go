@@ -5,7 +5,10 @@ import (
 	"fmt"
 	"html/template"
 	"io"
+	"math"
 	"strings"
+
+	"nightwright/visibility"
 )
 
 //go:embed sheet.html.tmpl
@@ -33,7 +36,9 @@ func (s *Sheet) WriteHTML(w io.Writer) error {
 		Facts         []head
 		Lines         []htmlLine
 		Notes, Advice []string
-	}{Title: s.title(), Where: s.where(), Notes: s.summary(), Advice: s.Cautions}
+		ReserveHead   string
+		Reserve       []htmlSpare
+	}{Title: s.title(), Where: s.where(), Notes: s.summary(), Advice: s.Cautions, ReserveHead: reserveHead, Reserve: s.htmlReserve()}
 	for _, f := range s.facts() {
 		data.Facts = append(data.Facts, head{f.name, f.text})
 	}
@@ -44,6 +49,25 @@ func (s *Sheet) WriteHTML(w io.Writer) error {
 		return fmt.Errorf("sheet: %w", err)
 	}
 	return nil
+}
+
+// htmlSpare is a line of the reserve list as the page shows it.
+type htmlSpare struct{ Field, Demand, What, From, To, Best, PerHour, RA, Dec string }
+
+func (s *Sheet) htmlReserve() []htmlSpare {
+	var out []htmlSpare
+	for i := range s.Reserve {
+		x := &s.Reserve[i]
+		what := x.Filter + " " + seconds(x.Exposure)
+		if x.Exposures > 1 {
+			what = fmt.Sprintf("set of %d from %s", x.Exposures, what)
+		}
+		out = append(out, htmlSpare{
+			x.Field, x.Demand, what, clock(x.From)[:5], clock(x.To)[:5], clock(x.Best)[:5], fmt.Sprintf("%.0f", 1e6*x.PerHour),
+			visibility.FormatHours(x.RA*math.Pi/180, 2), visibility.FormatDegrees(x.Dec*math.Pi/180, 1),
+		})
+	}
+	return out
 }
 
 func (s *Sheet) htmlLine(l *Line) htmlLine {

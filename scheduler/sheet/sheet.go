@@ -29,6 +29,8 @@ type Sheet struct {
 	Open                    []visibility.Interval
 	Lines                   []Line
 	Totals                  Totals
+	Reserve                 []Spare // what may be taken instead when the plan breaks, the worthiest of its time first
+	HourPrice               float64 // what an hour of this night is worth in the plan, C
 	Cautions                []string
 }
 
@@ -102,6 +104,11 @@ func Build(sv *survey.Survey, exact *visibility.Exact, cal *constraints.Calendar
 	s.Lines = b.lines()
 	s.ClockChange = clockChange(s.Zone, s.Sky.Night)
 	s.Totals = totals(s)
+	for i := range pt.Nights {
+		if r := &pt.Nights[i]; r.Telescope == ask.Telescope && r.Night == int32(ask.Night) {
+			s.HourPrice = r.PricePerHour
+		}
+	}
 	s.Cautions = cautions(s, site)
 	return s, nil
 }

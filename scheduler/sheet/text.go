@@ -51,6 +51,13 @@ func (s *Sheet) WriteText(w io.Writer) error {
 	for _, line := range s.summary() {
 		p("%s", line)
 	}
+	if list := s.reserve(); len(list) > 0 {
+		p("")
+		p("%s", reserveHead)
+		for _, line := range list {
+			p("%s", line)
+		}
+	}
 	p("")
 	for _, c := range s.Cautions {
 		hang(2, "! "+c)

@@ -43,8 +43,15 @@ func Sheet(ctx context.Context, s *Survey, pt *tables.PlanTables, telescope, nig
 	if err != nil {
 		return nil, &InputError{What: err.Error()}
 	}
+	list.Reserve, err = sheet.Reserve(ctx, s.Survey, s.Exact, s.Losses, pt, sheet.Ask{Telescope: telescope, Night: s.FirstNight + survey.Day(n)}, reserveLines, max(1, o.Workers))
+	if err != nil {
+		return nil, err
+	}
 	return list, nil
 }
+
+// reserveLines is how many entries a sheet's reserve list has at most.
+const reserveLines = 10
 
 // SheetForms lists the forms of a sheet, by the suffix of their files.
 func SheetForms() []string { return []string{"txt", "csv", "html"} }
