@@ -49,6 +49,9 @@ func BenchmarkHeadline(b *testing.B) {
 
 // TestMemoryStays: a hundred seasons more take no memory more.
 func TestMemoryStays(t *testing.T) {
+	if testing.Short() {
+		return // the race detector's rounds have enough without it
+	}
 	k := build(t, small())
 	troupe := NewTroupe(k.Stage, Cast{Policy: FixedPrices})
 	heap := func(seasons int) uint64 {

@@ -87,6 +87,9 @@ func TestCompare(t *testing.T) {
 // TestPairsCutVariance: under the same skies the difference of two networks
 // that share sites is known better than under skies of their own.
 func TestPairsCutVariance(t *testing.T) {
+	if testing.Short() {
+		return // the race detector's rounds have enough without it
+	}
 	k := build(t, demo(t, 5))
 	const seasons = 40
 	run := func(sites []int, seed uint64) []float64 {

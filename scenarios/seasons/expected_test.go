@@ -30,6 +30,9 @@ func expectedPlan(t *testing.T, k *stageKit, clear float64) *model.Outcome {
 // expected weather beats the weather-blind one under the same skies, with its
 // lists and with its prices.
 func TestExpectedPlans(t *testing.T) {
+	if testing.Short() {
+		return // the race detector's rounds have enough without it
+	}
 	k := build(t, small())
 	blind, err := scheduler.Solve(context.Background(), scheduler.Input{Survey: k.Survey, Sky: k.sky, Calendar: k.p.Calendar, Windows: k.win, Workers: 2}, scheduler.Params{Effort: "quick", Seed: 1})
 	if err != nil {

@@ -54,6 +54,9 @@ func TestSeasonsAreLegal(t *testing.T) {
 // TestNoPolicyBeatsHindsight: the ceiling with a season's weather known bounds
 // what any way of acting gets in it.
 func TestNoPolicyBeatsHindsight(t *testing.T) {
+	if testing.Short() {
+		return // the race detector's rounds have enough without it
+	}
 	sv := small()
 	k := build(t, sv)
 	for season := range 2 {

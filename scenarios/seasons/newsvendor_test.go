@@ -60,6 +60,9 @@ func oneField(t *testing.T, visits int, clear float64) *stageKit {
 // sum over k <= n of P(D >= k), and whose n-th visit adds P(D >= n) (the
 // classical single-period model; Arrow, Harris & Marschak 1951).
 func TestNewsvendor(t *testing.T) {
+	if testing.Short() {
+		return // the race detector's rounds have enough without it
+	}
 	const nights, p, seasons = 8, 0.5, 4000
 	atLeast := func(n int) float64 { return binomialTail(nights, n, p) }
 	var before []float64
@@ -105,6 +108,9 @@ func TestNewsvendor(t *testing.T) {
 // it in 93 to 97 % of them (the binomial's own spread: 0.7 %). With 30 seasons
 // of this lopsided count they hold it in 92.6 %: Student's interval wants more.
 func TestIntervalsHoldTheTruth(t *testing.T) {
+	if testing.Short() {
+		return // the race detector's rounds have enough without it
+	}
 	const repeats, seasons, visits, p = 1000, 100, 4, 0.5
 	k := oneField(t, visits, p)
 	truth := 0.0
