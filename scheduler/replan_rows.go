@@ -128,7 +128,7 @@ func (r *replanner) finish(ascent *dual.Ascent, out *Replanned) {
 	out.CeilingHeld = ceiling
 	kept := dual.NewAscentAt(r.ph, r.old.Prices)
 	if len(r.held) > 0 {
-		kept.StartMu(r.mu)
+		kept.StartMu(ascent.Oracle().Mu)
 		out.CeilingHeld = min(ceiling, kept.CeilingWithin(r.ctx, r.par.CeilingBin))
 	}
 	planned := &model.Plan{}

@@ -396,3 +396,38 @@ func (s *season) earlierOf(out *scheduler.Replanned, when *season) *scheduler.Ea
 	}
 	return old
 }
+
+// TestAnUrgentField: a heavy field that is added with a deadline gets its visits
+// before it, others make room; one that is taken out leaves its time to others.
+func TestAnUrgentField(t *testing.T) {
+	s := start(t, starter.Family("small", 2))
+	s.past.From = s.noon(t, 3)
+	s.follow(s.past.From, func(*model.Exposure) (bool, float64) { return true, 0.6 })
+	old := s.earlier()
+	par := scheduler.ReplanParams{Hold: 12 * 3600e6, Stability: 0.5}
+	sv := *s.kit.Survey
+	sv.Fields = append([]survey.Field{}, sv.Fields...)
+	// A field that is well up now, again, under another name.
+	like := s.plan.Plan.Exposures[len(s.plan.Plan.Exposures)/3].Field
+	urgent := sv.Fields[like]
+	deadline := model.Sec(s.past.From) + 5*86400
+	urgent.Name, urgent.Weight, urgent.NotAfter = "urgent", 20*urgent.Weight, deadline
+	sv.Fields = append(sv.Fields, urgent)
+	k := build(t, &sv, 2)
+	s.kit = k
+	old.Weights, old.Wanted = append(old.Weights, math.NaN()), append(old.Wanted, 0)
+	out := s.replan(t, old, par)
+	s.judge(t, "an urgent field", out)
+	got := 0
+	for _, e := range out.Plan.Exposures {
+		if int(e.Field) == len(sv.Fields)-1 {
+			if got++; model.Sec(e.End) > deadline {
+				t.Errorf("a visit ends %.0f s after the deadline", model.Sec(e.End)-deadline)
+			}
+		}
+	}
+	t.Logf("the urgent field got %d exposures; %+v", got, out.Tally)
+	if got < 2 || out.Tally.Lost != 0 {
+		t.Errorf("the urgent field got %d exposures, %+v", got, out.Tally)
+	}
+}
