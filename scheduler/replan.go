@@ -332,12 +332,25 @@ func (r *replanner) setMu(ascent *dual.Ascent) {
 		}
 		count[v.want]++
 	}
+	// The ceiling starts near where it will end: at what is got, and where nothing
+	// is, at what others of the same worth get. Any start is right.
+	guess := slices.Clone(r.mu)
+	var ratios []float64
 	for i := range r.mu {
+		if count[i] > 0 {
+			ratios = append(ratios, r.mu[i]/r.p.Wants[i].Value)
+		}
 		if count[i] < r.p.Wants[i].Visits {
 			r.mu[i] = 0
 		}
 	}
-	ascent.StartMu(r.mu)
+	slices.Sort(ratios)
+	for i := range guess {
+		if count[i] == 0 && len(ratios) > 0 {
+			guess[i] = ratios[len(ratios)/4] * r.p.Wants[i].Value
+		}
+	}
+	ascent.StartMu(guess)
 }
 
 // tally counts what stood of the earlier plan, and what was lost of it, bonuses

@@ -346,8 +346,9 @@ func TestALostNight(t *testing.T) {
 }
 
 // TestANightLostAndGivenBack: a night ahead is lost, planned without, and given
-// back: the season is worth what it was, or more; when moving visits is charged it
-// comes within a thousandth of that.
+// back: the season is worth what it was to a thousandth, and to five where moving
+// visits is charged. Given back before anything was planned without it, the very
+// same plan comes out.
 func TestANightLostAndGivenBack(t *testing.T) {
 	for _, family := range []string{"small", "one-site"}[:rounds(1, 2)] {
 		for seed := range uint64(rounds(2, 10)) {
@@ -362,6 +363,12 @@ func TestANightLostAndGivenBack(t *testing.T) {
 			s.lose(t, telescope, model.MicroOf(in.From), model.MicroOf(in.To))
 			without := s.replan(t, old, par)
 			s.judge(t, "without the night", without)
+			same := *s
+			same.losses = make([][]visibility.Interval, len(s.losses))
+			same.reopen(t)
+			if c := same.replan(t, old, par).Coverage; c != before.Coverage {
+				t.Errorf("%s %d: coverage %.9f with the night lost and given back before a re-plan; it was %.9f", family, seed+1, c, before.Coverage)
+			}
 			again := *s
 			again.plan = without.Outcome
 			again.losses = make([][]visibility.Interval, len(s.losses))
@@ -370,7 +377,7 @@ func TestANightLostAndGivenBack(t *testing.T) {
 			par.Stability = 0
 			free := again.judge(t, "with the night again, anything may move", again.replan(t, again.earlierOf(without, s), par))
 			t.Logf("%s %d: coverage %.6f, without the night %.6f, with it again %.6f, and %.6f when anything may move", family, seed+1, before.Coverage, without.Coverage, firm, free)
-			if free < before.Coverage-1e-6 || firm < 0.999*before.Coverage {
+			if free < 0.999*before.Coverage || firm < 0.995*before.Coverage || firm <= without.Coverage {
 				t.Errorf("%s %d: coverage %.6f with the night given back, %.6f when anything may move; it was %.6f", family, seed+1, firm, free, before.Coverage)
 			}
 		}
