@@ -14,6 +14,9 @@ import (
 // counted must be legal with the closed hours as lost time, and the coverage
 // must come out the same. The judge knows nothing of this package.
 func TestSeasonsAreLegal(t *testing.T) {
+	if testing.Short() {
+		return // random surveys, below, are enough for the race detector
+	}
 	for _, sv := range []*stageKit{build(t, small()), build(t, demo(t, 6))} {
 		plan, err := scheduler.Solve(context.Background(), scheduler.Input{Survey: sv.Survey, Sky: sv.sky, Calendar: sv.p.Calendar, Windows: sv.win, Workers: 2}, scheduler.Params{Effort: "quick"})
 		if err != nil {
