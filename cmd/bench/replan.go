@@ -45,7 +45,7 @@ func replans(name string, seed uint64, a *ask, nights int) error {
 		old.Visit, old.Set = max(old.Visit, e.Visit), max(old.Set, e.Set)
 	}
 	rng := rand.New(rand.NewPCG(seed, 5))
-	stabilities := []float64{0, 0.5, 1}
+	stabilities := []float64{0, 0.1, 0.25, 0.5, 1}
 	sums := make([]measured, len(stabilities))
 	for range nights {
 		site, night := rng.IntN(len(sv.Sites)), 1+rng.IntN(max(1, sv.Nights()*2/3))

@@ -15,7 +15,7 @@ import (
 // defaultHold and defaultStability are those of replan.
 const (
 	defaultHold      = 24 * time.Hour
-	defaultStability = 0.5
+	defaultStability = 0.25
 )
 
 func (a *app) replanCommand() *cobra.Command {
