@@ -84,6 +84,10 @@ func (p *printer) telescopes(m *tables.Summary, nights []tables.NightRow) {
 	p.table(l)
 }
 
+// noPrice is under what a price of an hour is nothing: a millionth of a
+// millionth of coverage is what is left of the price search.
+const noPrice = 1e-12
+
 // extremes is how many of the dearest and of the cheapest nights are shown.
 const extremes = 3
 
@@ -109,7 +113,7 @@ func (p *printer) nights(rows []tables.NightRow) {
 		}
 		p.table(l)
 	}
-	if open[0].PricePerHour == 0 {
+	if open[0].PricePerHour < noPrice {
 		p.head("No night is scarce: an hour more would add nothing to the ceiling")
 		return
 	}
@@ -143,7 +147,7 @@ func fixed(x float64, decimals int) string { return strconv.FormatFloat(x, 'f', 
 func millionths(x float64) string {
 	x *= 1e6
 	switch {
-	case x == 0:
+	case math.Abs(x) < 1e6*noPrice:
 		return "0"
 	case math.Abs(x) >= 100:
 		return thousands(int(math.Round(x)))
