@@ -58,6 +58,10 @@ func (p *played) night(night string, lost []string, broke map[string]time.Time) 
 			all = append(all, rows[0])
 		}
 		for _, r := range rows[1:] {
+			if r[0] == "reserve" { // no times: it wasn't planned
+				all = append(all, r)
+				continue
+			}
 			at, err := time.Parse(time.RFC3339Nano, r[start])
 			if err != nil {
 				p.t.Fatal(err)
