@@ -35,6 +35,7 @@ const (
 func newPlacer(s *state, mu []float64) *placer {
 	pl := &placer{s: s, mu: slices.Clone(mu), to: s.p.Nights}
 	pl.find = finder{s: s}
+	s.mu = pl.mu
 	for range s.p.Workers {
 		pl.scouts = append(pl.scouts, scout{find: pl.find})
 	}
@@ -54,13 +55,13 @@ func (pl *placer) place(field int) bool {
 	before := pl.objective()
 	s.begin()
 	pl.replace(field, 0)
-	after := pl.objective()
+	after := pl.objective() + s.hoped(field)
 	if bonus := s.p.Bonus(field); bonus > 0 && s.got[field] < s.wanted[field] && 4*s.got[field] >= 3*s.wanted[field] {
 		lack := float64(s.wanted[field] - s.got[field])
 		s.rollback()
 		s.begin()
 		pl.replace(field, bonus/lack)
-		if forced := pl.objective(); forced > after {
+		if forced := pl.objective() + s.hoped(field); forced > after {
 			after = forced
 		} else {
 			s.rollback()
@@ -78,6 +79,21 @@ func (pl *placer) place(field int) bool {
 		s.stats.Better++
 	}
 	return true
+}
+
+// hoped is what the visits that a transaction made leave are hoped to get
+// elsewhere when their own fields are placed again, C.
+func (s *state) hoped(field int) float64 {
+	if s.hope == 0 {
+		return 0
+	}
+	var sum float64
+	for _, id := range s.undo.died {
+		if v := &s.visits[id]; int(s.p.Wants[v.want].Field) != field {
+			sum += float64(v.credit)/scoreUnit - s.parting(v)
+		}
+	}
+	return sum
 }
 
 // replace takes a field's visits out and puts them back, with extra added to

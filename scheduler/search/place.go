@@ -200,7 +200,7 @@ func (f *finder) stretch(lo, hi int64) {
 		}
 		f.position(p, p, lo, hi) // free insertion
 		// The least a neighbour would cost, against the most the spot can earn.
-		if p < m && f.most+f.dear*model.Sec(list[p].length+f.n.gap[p])-float64(list[p].credit)/scoreUnit <= f.least && f.deep <= 1 {
+		if p < m && f.most+f.dear*model.Sec(list[p].length+f.n.gap[p])-f.s.parting(&f.s.visits[list[p].visit]) <= f.least && f.deep <= 1 {
 			continue
 		}
 		for next := p + 1; next <= min(m, p+max(1, f.deep)); next++ {
@@ -257,6 +257,9 @@ func (f *finder) position(p, next int, lo, hi int64) {
 		seed = max(seed, to-3600*model.Micro)
 	}
 	q := f.quality(seed)
+	if f.beaten(seed, to-from, f.value*q, lost, need-free) {
+		return
+	}
 	if next > p {
 		rate := f.s.theta * f.s.price.At(int(f.scope), seed)
 		if f.value*q*1.02+f.extra-lost-rate*model.Sec(need+f.lg-free) <= f.least {
@@ -272,6 +275,24 @@ func (f *finder) position(p, next int, lo, hi int64) {
 		}
 	}
 	f.weigh(p, next, from, to, seed, free, lost, eject)
+}
+
+// beaten reports whether the bin of a position already has a spot that is worth
+// more than the position can be: its quality hardly changes over a few minutes,
+// and the gaps only take.
+func (f *finder) beaten(seed, span int64, worth, lost float64, need int64) bool {
+	k := len(f.spots) - 1
+	if k < 0 || span > 600*model.Micro || f.noise > 0 {
+		return false
+	}
+	last := &f.spots[k]
+	if last.scope != f.scope || last.night != f.night || last.start/f.bin != seed/f.bin {
+		return false
+	}
+	if need > 0 && f.s.theta > 0 {
+		lost += f.s.theta * f.s.price.At(int(f.scope), seed) * model.Sec(need)
+	}
+	return worth*1.003+f.extra-lost <= last.profit
 }
 
 // visitSeconds returns a visit's exposure time.

@@ -86,8 +86,10 @@ type visit struct {
 type state struct {
 	p        *model.Problem
 	price    pricer
-	theta    float64 // weight of the price of time in a move's worth
-	nights   []night // [scope * p.Nights + night]
+	theta    float64   // weight of the price of time in a move's worth
+	hope     float64   // part of its want's mu that a visit made to leave is believed to get elsewhere
+	mu       []float64 // [want] the placer's
+	nights   []night   // [scope * p.Nights + night]
 	visits   []visit
 	free     []int32   // dead visits to be used again
 	of       [][]int32 // [want] its visits, unordered
@@ -204,6 +206,16 @@ func (s *state) set(scope int32, e *entry, start int64) bool {
 // qualityGuard keeps plans off the edge of min_quality by more than the fast
 // sky's error.
 const qualityGuard = 1e-5
+
+// parting is what a move that makes a visit leave is charged for it, C: its
+// credit less what it is hoped to get elsewhere.
+func (s *state) parting(v *visit) float64 {
+	c := float64(v.credit) / scoreUnit
+	if s.hope > 0 {
+		c -= s.hope * min(s.mu[v.want], c)
+	}
+	return c
+}
 
 // credit is what an exposure of quality q adds to C, in score units.
 func (s *state) credit(w *model.Want, q float64) int64 {
