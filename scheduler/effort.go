@@ -46,11 +46,9 @@ var efforts = map[string]effort{
 }
 
 // fineCells is the size (wants x telescopes x nights) up to which all steps of
-// a fine level are taken; larger surveys take fewer, at least leastFine.
-const (
-	fineCells = 500_000
-	leastFine = 3
-)
+// a fine level are taken; larger surveys take fewer, down to none: what the
+// smoothed prices leave there is small.
+const fineCells = 500_000
 
 // fit scales a fine level's steps to the survey's size: each costs as much as
 // a ceiling.
@@ -60,7 +58,17 @@ func fit(p *model.Problem, lv dual.Level) dual.Level {
 		cells += len(p.Wants[i].Scopes) * p.Nights
 	}
 	if cells > fineCells {
-		lv.Steps = min(lv.Steps, max(leastFine, lv.Steps*fineCells/cells))
+		lv.Steps = lv.Steps * fineCells / cells
 	}
 	return lv
+}
+
+// hopeOf is the part of its want's multiplier that a visit made to leave is
+// hoped to get elsewhere: none in the last sweeps, after which nothing is placed
+// again.
+func hopeOf(theta float64) float64 {
+	if theta > 0 {
+		return 0.9
+	}
+	return 0
 }

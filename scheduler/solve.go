@@ -115,10 +115,12 @@ func (c *conductor) solve(seed uint64) *model.Outcome {
 	})
 	for i, theta := range c.effort.sweeps {
 		phase := fmt.Sprintf("sweep %d of %d", i+1, len(c.effort.sweeps))
+		s.Hope(hopeOf(theta))
 		s.Sweep(c.ctx, theta, func(done, of int) {
 			c.report(model.Progress{Phase: phase, Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
 		})
 	}
+	s.Hope(0)
 	s.Iterate(c.ctx, c.effort.iterations, func(done, of int) {
 		c.report(model.Progress{Phase: "iterations", Done: done, Total: of, Coverage: s.Coverage(), Ceiling: ceiling})
 	})

@@ -48,6 +48,7 @@ type Ascent struct {
 	times  [][]float64 // [chunk][program] exposure time of the picks, s
 	shares *shareState
 	softs  []softLoad // [chunk] of a soft sweep
+	base   []float64  // [scope*Nights + night] the night's own price under those of its slots, where keep_free asks for one
 	pace   []float64  // [rate index] last soft step
 	unit   []float64  // [rate index] C per second: what a visit there is worth
 	rank   []int      // a shuffle of the fields, for sampling
@@ -76,6 +77,7 @@ func NewAscent(p *model.Problem) *Ascent {
 		a.scale = 0.2 * value / time
 	}
 	a.rank = rand.New(rand.NewPCG(1, 0)).Perm(len(p.FieldWant) - 1)
+	a.base = make([]float64, len(pr.nights))
 	a.unit = make([]float64, len(pr.rate))
 	for k := range a.unit {
 		a.unit[k] = a.scale
@@ -137,20 +139,7 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 		}
 		a.shares.move(a.programTime(), eta*a.scale)
 		a.shares.rates(a.oracle.Share)
-		for s, c := range a.prices.capacity {
-			if c <= 0 {
-				continue
-			}
-			own := groups[0].velocity[groups[0].of[s]]
-			d := groups[0].step[groups[0].of[s]] * own
-			for _, g := range groups[1:] {
-				// Idle time elsewhere is no reason to sell a crowded hour cheap.
-				if v := g.velocity[g.of[s]]; v > 0 || own <= 0 {
-					d += g.step[g.of[s]] * v
-				}
-			}
-			a.prices.rate[s] = math.Max(0, a.prices.rate[s]+eta*a.unit[s]*d)
-		}
+		a.move(groups, eta)
 		if progress != nil {
 			progress(step+1, lv.Steps, bound)
 		}
@@ -158,18 +147,18 @@ func (a *Ascent) Run(ctx context.Context, lv Level, progress func(step, of int, 
 	if !math.IsInf(best, 1) {
 		a.Restore(kept)
 	}
-	a.prices.integrate()
+	a.round()
 }
 
 // fineBin is the width of the start bins of fine levels, s.
 const fineBin = 600
 
 // Kept is a state of the prices that Restore goes back to.
-type Kept struct{ rate, mu, low, high []float64 }
+type Kept struct{ rate, base, mu, low, high []float64 }
 
 // Keep returns the present prices and count multipliers.
 func (a *Ascent) Keep() Kept {
-	return Kept{append([]float64(nil), a.prices.rate...), append([]float64(nil), a.oracle.Mu...),
+	return Kept{append([]float64(nil), a.prices.rate...), append([]float64(nil), a.base...), append([]float64(nil), a.oracle.Mu...),
 		append([]float64(nil), a.shares.low...), append([]float64(nil), a.shares.high...)}
 }
 
@@ -177,6 +166,7 @@ func (a *Ascent) Keep() Kept {
 func (a *Ascent) Restore(k Kept) {
 	a.oracle.soft = nil
 	copy(a.prices.rate, k.rate)
+	copy(a.base, k.base)
 	copy(a.oracle.Mu, k.mu)
 	copy(a.shares.low, k.low)
 	copy(a.shares.high, k.high)
@@ -276,99 +266,4 @@ func (a *Ascent) addLoad(chunk, wi int, picks []pick) {
 			a.prices.charge(load, int(pk.scope), int(pk.night), s, s+sh.busy)
 		}
 	}
-}
-
-// group is the slots gathered in blocks, with each block's capacity and the
-// running mean of its relative excess demand.
-type group struct {
-	of       []int32
-	capacity []float64
-	load     []float64
-	velocity []float64
-	step     []float64 // own gain, shrinking when the excess changes sign
-	most     float64
-	memory   float64
-}
-
-// move takes the loads of a step in.
-func (g *group) move(load []float64) {
-	clear(g.load)
-	for s, x := range load {
-		if x != 0 {
-			g.load[g.of[s]] += x
-		}
-	}
-	for b, c := range g.capacity {
-		if c > 0 {
-			x := math.Max(-1, math.Min(1.5, (g.load[b]-c)/c))
-			v := g.memory*g.velocity[b] + (1-g.memory)*x
-			if v*g.velocity[b] < 0 {
-				g.step[b] *= 0.6
-			} else {
-				g.step[b] = math.Min(g.step[b]*1.05, g.most)
-			}
-			g.velocity[b] = v
-		}
-	}
-}
-
-// group assigns each slot to its block: telescope, group of nights, and
-// sidereal hours.
-func (a *Ascent) group(bl block, memory float64) *group {
-	pr := a.prices
-	g := &group{of: make([]int32, len(pr.rate)), most: bl.gain, memory: memory}
-	n := a.assign(g.of, bl)
-	g.capacity, g.load, g.velocity = make([]float64, n), make([]float64, n), make([]float64, n)
-	g.step = make([]float64, n)
-	for i := range g.step {
-		g.step[i] = bl.gain
-	}
-	keep := a.keepFactor()
-	for s, c := range pr.capacity {
-		if c > 0 {
-			g.capacity[g.of[s]] += c * keep[pr.slotOf(s)/pr.n]
-		}
-	}
-	return g
-}
-
-// assign fills of with block numbers and returns how many there are.
-func (a *Ascent) assign(of []int32, bl block) int {
-	pr := a.prices
-	if bl.hours == 0 {
-		for s := range of {
-			of[s] = int32(s)
-		}
-		return len(of)
-	}
-	perDay := int(math.Ceil(24 / bl.hours))
-	nights := bl.nights
-	if nights == 0 {
-		nights = a.p.Nights + 4
-	}
-	groups := (a.p.Nights+2)/nights + 2
-	for t := range a.p.Scopes {
-		row := t
-		if bl.network {
-			row = 0
-		}
-		lon := a.p.Survey.Sites[a.p.Scopes[t].Site].Longitude
-		for s := range pr.n {
-			us := (pr.first+int64(s))*pr.slot + pr.slot/2
-			local := model.Sec(us) - 43200 + lon/(2*math.Pi)*86400
-			night := int(math.Floor(local/86400)) - int(a.p.Survey.FirstNight) + 1
-			group := min(max(night/nights, 0), groups-1)
-			// Sidereal time to a minute or so is enough to group slots.
-			lst := math.Mod(model.Sec(us)/86164.0905+lon/(2*math.Pi), 1)
-			if lst < 0 {
-				lst++
-			}
-			h := min(int(lst*24/bl.hours), perDay-1)
-			of[t*pr.n+s] = int32((row*groups+group)*perDay + h)
-		}
-	}
-	for i, k := range pr.parts {
-		of[len(a.p.Scopes)*pr.n+i] = of[k]
-	}
-	return len(a.p.Scopes) * groups * perDay
 }

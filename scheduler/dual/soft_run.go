@@ -59,8 +59,22 @@ func (a *Ascent) Soften(ctx context.Context, st Soft, progress func(step, of int
 			progress(step+1, st.Steps, bound)
 		}
 	}
+	a.round()
+}
+
+// round takes what is left of prices that were on their way to nothing for
+// nothing. Any prices make a ceiling.
+func (a *Ascent) round() {
+	for k, r := range a.prices.rate {
+		if r < leastPrice*a.unit[k] {
+			a.prices.rate[k] = 0
+		}
+	}
 	a.prices.integrate()
 }
+
+// leastPrice is the least price there is, in parts of what a visit is worth.
+const leastPrice = 1e-4
 
 // sample says which part of the fields (one in so many) a step looks at: the
 // more smoothing there is, the fewer show where the load is. The last steps look
@@ -166,8 +180,12 @@ func (a *Ascent) moveSoft(st Soft, fall float64, groups []*group, load, give []f
 			unit = use / yield
 		}
 		whole := answer(use, room, a.softs[0].night[i]*scale, st.Night, st.Most*unit)
+		base := a.base[i]
+		if keep[t] < 1 {
+			a.base[i] = math.Max(0, base+whole+st.Network*unit*drift(groups, pn, use < room))
+		}
 		for j, k := range pn.slots {
-			c := pr.capacity[k] * keep[t]
+			c := pr.capacity[k]
 			if !pn.open[j] || c <= 0 {
 				continue
 			}
@@ -176,20 +194,33 @@ func (a *Ascent) moveSoft(st Soft, fall float64, groups []*group, load, give []f
 				own = load[k] / give[k]
 			}
 			a.unit[k] = own / (5 * tau)
-			d := whole + answer(load[k], c, give[k], st.Slot, st.Most*own)
-			for _, g := range groups {
-				if v := g.velocity[g.of[k]]; v > 0 || load[k] < c {
-					d += st.Network * own * g.step[g.of[k]] * v
+			d := answer(load[k], c, give[k], st.Slot, st.Most*own)
+			if keep[t] == 1 {
+				d += whole
+				for _, g := range groups {
+					if v := g.velocity[g.of[k]]; v > 0 || load[k] < c {
+						d += st.Network * own * g.step[g.of[k]] * v
+					}
 				}
 			}
-			v := st.Memory*a.pace[k]*fall + d
-			old := pr.rate[k]
-			pr.rate[k] = math.Max(0, old+v)
-			a.pace[k] = pr.rate[k] - old
+			old := pr.rate[k] - base
+			next := math.Max(0, old+st.Memory*a.pace[k]*fall+d)
+			pr.rate[k], a.pace[k] = a.base[i]+next, next-old
 		}
 	}
 	a.shares.move(a.softs[0].time, 5*tau*a.scale)
 	a.shares.rates(a.oracle.Share)
+}
+
+// drift is what groups over the network add to a whole night's price.
+func drift(groups []*group, pn *priceNight, idle bool) float64 {
+	var d float64
+	for _, g := range groups {
+		if v := g.velocity[g.of[pn.slots[0]]]; v > 0 || idle {
+			d += g.step[g.of[pn.slots[0]]] * v
+		}
+	}
+	return d
 }
 
 // answer is the change of price that brings a load to its capacity: load falls

@@ -62,7 +62,7 @@ func TestPlanEndedAtAnyPhase(t *testing.T) {
 func TestPlanKeptAtAnyPhase(t *testing.T) {
 	dir := t.TempDir()
 	kept := 0
-	for _, stop := range []string{"windows", "prices 1 of 3", "ceiling", "construction", "sweep 1 of 2", "iterations", "recount"} {
+	for _, stop := range []string{"windows", "prices", "ceiling", "construction", "sweep 1 of 2", "iterations", "recount"} {
 		out := filepath.Join(dir, stop)
 		for _, stands := range []bool{false, true} {
 			ctx, cancel := context.WithCancel(t.Context())
