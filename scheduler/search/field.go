@@ -81,21 +81,6 @@ func (pl *placer) place(field int) bool {
 	return true
 }
 
-// hoped is what the visits that a transaction made leave are hoped to get
-// elsewhere when their own fields are placed again, C.
-func (s *state) hoped(field int) float64 {
-	if s.hope == 0 {
-		return 0
-	}
-	var sum float64
-	for _, id := range s.undo.died {
-		if v := &s.visits[id]; int(s.p.Wants[v.want].Field) != field {
-			sum += float64(v.credit)/scoreUnit - s.parting(v)
-		}
-	}
-	return sum
-}
-
 // replace takes a field's visits out and puts them back, with extra added to
 // the worth of every spot.
 func (pl *placer) replace(field int, extra float64) {

@@ -277,24 +277,6 @@ func (f *finder) position(p, next int, lo, hi int64) {
 	f.weigh(p, next, from, to, seed, free, lost, eject)
 }
 
-// beaten reports whether the bin of a position already has a spot that is worth
-// more than the position can be: its quality hardly changes over a few minutes,
-// and the gaps only take.
-func (f *finder) beaten(seed, span int64, worth, lost float64, need int64) bool {
-	k := len(f.spots) - 1
-	if k < 0 || span > 600*model.Micro || f.noise > 0 {
-		return false
-	}
-	last := &f.spots[k]
-	if last.scope != f.scope || last.night != f.night || last.start/f.bin != seed/f.bin {
-		return false
-	}
-	if need > 0 && f.s.theta > 0 {
-		lost += f.s.theta * f.s.price.At(int(f.scope), seed) * model.Sec(need)
-	}
-	return worth*1.003+f.extra-lost <= last.profit
-}
-
 // visitSeconds returns a visit's exposure time.
 func (s *state) visitSeconds(v *visit) float64 {
 	w := &s.p.Wants[v.want]

@@ -47,3 +47,21 @@ func (f *finder) screen() {
 		}
 	}
 }
+
+// beaten reports whether the bin of a position already has a spot that is worth
+// more than the position can be: its quality hardly changes over a few minutes,
+// and the gaps only take.
+func (f *finder) beaten(seed, span int64, worth, lost float64, need int64) bool {
+	k := len(f.spots) - 1
+	if k < 0 || span > 600*model.Micro || f.noise > 0 {
+		return false
+	}
+	last := &f.spots[k]
+	if last.scope != f.scope || last.night != f.night || last.start/f.bin != seed/f.bin {
+		return false
+	}
+	if need > 0 && f.s.theta > 0 {
+		lost += f.s.theta * f.s.price.At(int(f.scope), seed) * model.Sec(need)
+	}
+	return worth*1.003+f.extra-lost <= last.profit
+}

@@ -96,11 +96,6 @@ func (x *Search) run(ctx context.Context, order []int, theta float64, report fun
 	}
 }
 
-// Hope sets the part of its want's multiplier that a visit which has to leave is
-// believed to get elsewhere, from 0 (nothing) to 1. With hope, moves may lower
-// the coverage for the fields after them to raise; end without.
-func (x *Search) Hope(part float64) { x.s.hope = part }
-
 // Plan writes the state out, sorted by start and telescope.
 func (x *Search) Plan() *model.Plan {
 	var out []model.Exposure

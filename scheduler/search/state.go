@@ -207,16 +207,6 @@ func (s *state) set(scope int32, e *entry, start int64) bool {
 // sky's error.
 const qualityGuard = 1e-5
 
-// parting is what a move that makes a visit leave is charged for it, C: its
-// credit less what it is hoped to get elsewhere.
-func (s *state) parting(v *visit) float64 {
-	c := float64(v.credit) / scoreUnit
-	if s.hope > 0 {
-		c -= s.hope * min(s.mu[v.want], c)
-	}
-	return c
-}
-
 // credit is what an exposure of quality q adds to C, in score units.
 func (s *state) credit(w *model.Want, q float64) int64 {
 	return int64(math.Round(w.Value * q / float64(len(w.Steps)) * scoreUnit))
