@@ -151,7 +151,11 @@ func (s *sampler) quality(w *model.Want, step int, t int32, start int64) float64
 func (s *sampler) worth(w *model.Want, step int, t int32, n int, start int64) float64 {
 	p := s.k.Problem
 	end := start + p.Length(&w.Steps[step], t) + p.Scopes[t].LeastGap
-	return w.Value/float64(len(w.Steps))*s.quality(w, step, t, start) - s.a.Prices().Cost(int(t), n, start, end)
+	q := s.quality(w, step, t, start)
+	if q < w.MinQuality {
+		return math.Inf(-1) // not legal
+	}
+	return w.Value/float64(len(w.Steps))*q - s.a.Prices().Cost(int(t), n, start, end)
 }
 
 // visits lists legal visits of a want.

@@ -139,6 +139,7 @@ type scratch struct {
 	picks   []pick
 	up      []cellBound
 	step    [][]binBest
+	queue   []int32 // of joinSteps
 }
 
 type binBest struct {
@@ -205,7 +206,7 @@ func (o *Oracle) gatherNight(sc *scratch, wi int, w *model.Want, t int32, n int,
 	}
 	if len(w.Steps) == 1 {
 		base := o.stepValue(w, 0, t)
-		o.scan(sc, wi, w, 0, t, n, base, func(s int64, bin int32, worth float64) {
+		o.scan(sc, wi, w, 0, t, n, base, func(s int64, bin int32, worth float64, _ bool) {
 			if worth > floor && worth > sc.worth[bin] {
 				sc.keep(bin, worth, t, int32(n), s)
 			}
@@ -226,8 +227,9 @@ func (o *Oracle) stepValue(w *model.Want, step int, t int32) float64 {
 }
 
 // scan calls found with every start that bounds the step's worth in the
-// telescope-night, in ascending order within each window and open interval.
-func (o *Oracle) scan(sc *scratch, wi int, w *model.Want, step int, t int32, n int, base float64, found func(s int64, bin int32, worth float64)) {
+// telescope-night, in ascending order within each window and open interval,
+// whose first is told. Between two starts of one the bound is linear.
+func (o *Oracle) scan(sc *scratch, wi int, w *model.Want, step int, t int32, n int, base float64, found func(s int64, bin int32, worth float64, first bool)) {
 	scope := &o.p.Scopes[t]
 	kind := o.kinds[wi][step]
 	si := o.shapeOf[kind][t]
@@ -251,28 +253,33 @@ func (o *Oracle) scan(sc *scratch, wi int, w *model.Want, step int, t int32, n i
 			worth := func(e *start) float64 {
 				i := int(e.cell) - first
 				q := up[i].left + float64(e.frac)*(up[i].right-up[i].left)
-				if e.frac == 0 && i > 0 && up[i-1].right > q {
-					q = up[i-1].right
+				most := max(up[i].left, up[i].right)
+				if e.frac == 0 && i > 0 {
+					q, most = max(q, up[i-1].right), max(most, up[i-1].left, up[i-1].right)
 				}
-				if e.frac == 1 && i+1 < len(up) && up[i+1].left > q {
-					q = up[i+1].left
+				if e.frac == 1 && i+1 < len(up) {
+					q, most = max(q, up[i+1].left), max(most, up[i+1].left, up[i+1].right)
+				}
+				if most < w.MinQuality {
+					// No middle in this cell reaches the least quality.
+					return math.Inf(-1)
 				}
 				return value*q + base - e.cost
 			}
 			edge := o.startAt(pn, g, sh, lo)
-			found(lo, edge.bin, worth(&edge))
+			found(lo, edge.bin, worth(&edge), true)
 			list := st.list[st.from[k]:st.from[k+1]]
 			for i := lowerBound(list, lo); i < len(list) && list[i].at <= hi; i++ {
 				e := &list[i]
 				v := worth(e)
-				found(e.at, e.bin, v)
+				found(e.at, e.bin, v, false)
 				if e.at == (int64(e.bin)+o.firstBin)*o.bin && e.bin > 0 && e.at > lo {
 					// The bin before ends here.
-					found(e.at, e.bin-1, v)
+					found(e.at, e.bin-1, v, false)
 				}
 			}
 			edge = o.startAt(pn, g, sh, hi)
-			found(hi, edge.bin, worth(&edge))
+			found(hi, edge.bin, worth(&edge), false)
 		}
 	}
 }

@@ -1,6 +1,8 @@
 package search
 
 import (
+	"sort"
+
 	"nightwright/scheduler/model"
 )
 
@@ -82,12 +84,9 @@ func (sc *scout) chain(w *model.Want, first spot, least float64) ([]spot, bool) 
 	for j := 1; j < len(w.Steps); j++ {
 		st := &w.Steps[j]
 		lo, hi := at+st.After-st.Tolerance/2, at+st.After+st.Tolerance/2
-		row := sc.steps[j]
+		row := sc.steps[j] // by start
 		best := int32(-1)
-		for i := range row {
-			if row[i].start < lo || row[i].start > hi {
-				continue
-			}
+		for i := sort.Search(len(row), func(k int) bool { return row[k].start >= lo }); i < len(row) && row[i].start <= hi; i++ {
 			if best < 0 || row[i].profit > row[best].profit {
 				best = int32(i)
 			}
