@@ -80,14 +80,14 @@ const leastPrice = 1e-4
 // more smoothing there is, the fewer show where the load is. The last steps look
 // at all.
 func (a *Ascent) sample(tau float64, left int) int {
-	enough := 3000
+	enough := 1500
 	switch {
 	case left <= 2:
 		return 1
 	case tau >= 0.02:
-		enough = 600
+		enough = 250
 	case tau >= 0.005:
-		enough = 1500
+		enough = 500
 	}
 	return max(1, (len(a.p.FieldWant)-1)/enough)
 }
