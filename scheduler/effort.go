@@ -32,7 +32,7 @@ func finePrices(steps int) dual.Level {
 // efforts by name.
 var efforts = map[string]effort{
 	"quick": {
-		soft: softPrices(30, 0.001), fine: finePrices(3), steer: 3, ceilingBin: 600,
+		soft: softPrices(50, 0.0007), fine: finePrices(4), steer: 3, ceilingBin: 600,
 		construct: 1, sweeps: []float64{0.5, 0}, iterations: 50,
 	},
 	"normal": {
