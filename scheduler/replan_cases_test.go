@@ -3,6 +3,7 @@ package scheduler_test
 import (
 	"fmt"
 	"math"
+	"slices"
 	"testing"
 
 	"nightwright/constraints/survey"
@@ -172,10 +173,17 @@ func TestAnUrgentField(t *testing.T) {
 	par := scheduler.ReplanParams{Hold: 12 * 3600e6, Stability: 0.5}
 	sv := *s.kit.Survey
 	sv.Fields = append([]survey.Field{}, sv.Fields...)
-	// A field that is well up now, again, under another name.
-	like := s.plan.Plan.Exposures[len(s.plan.Plan.Exposures)/3].Field
-	urgent := sv.Fields[like]
+	// The field that the plan has most of before the deadline, again, under
+	// another name.
 	deadline := model.Sec(s.past.From) + 5*86400
+	soon := make([]int, len(sv.Fields))
+	for _, e := range s.plan.Plan.Exposures {
+		if e.Start > s.past.From+par.Hold && model.Sec(e.End) < deadline {
+			soon[e.Field]++
+		}
+	}
+	like := slices.Index(soon, slices.Max(soon))
+	urgent := sv.Fields[like]
 	urgent.Name, urgent.Weight, urgent.NotAfter = "urgent", 20*urgent.Weight, deadline
 	sv.Fields = append(sv.Fields, urgent)
 	k := build(t, &sv, 2)
