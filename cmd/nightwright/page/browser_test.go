@@ -18,7 +18,7 @@ import (
 // browser starts Chromium, with more of its options where they are given.
 func browser(t *testing.T, more ...chromedp.ExecAllocatorOption) context.Context {
 	t.Helper()
-	if testing.Short() { // the race detector gains nothing from a browser
+	if testing.Short() && os.Getenv("NIGHTWRIGHT_REQUIRE_ALL") != "1" { // the race detector gains nothing from a browser
 		t.Skip("-short")
 	}
 	path := ""
