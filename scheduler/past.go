@@ -1,9 +1,6 @@
 package scheduler
 
 import (
-	"cmp"
-	"slices"
-
 	"nightwright/scheduler/model"
 )
 
@@ -66,18 +63,5 @@ func (h *Past) merge(plan *model.Plan) *model.Plan {
 		all = append(all, e)
 	}
 	all = append(all, plan.Exposures...)
-	slices.SortStableFunc(all, func(a, b model.Exposure) int {
-		return cmp.Or(cmp.Compare(a.Start, b.Start), cmp.Compare(a.Telescope, b.Telescope))
-	})
-	sets := map[int64]int64{}
-	for i := range all {
-		all[i].Visit = int64(i + 1)
-		if s := all[i].Set; s != 0 {
-			if sets[s] == 0 {
-				sets[s] = int64(len(sets) + 1)
-			}
-			all[i].Set = sets[s]
-		}
-	}
-	return &model.Plan{Exposures: all}
+	return model.NewPlan(all)
 }

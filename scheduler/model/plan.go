@@ -1,5 +1,10 @@
 package model
 
+import (
+	"cmp"
+	"slices"
+)
+
 // State says how firm an exposure of a plan is.
 type State uint8
 
@@ -42,4 +47,23 @@ type Exposure struct {
 // Plan is what the program writes out: exposures sorted by (Start, Telescope).
 type Plan struct {
 	Exposures []Exposure
+}
+
+// NewPlan sorts exposures by start and telescope and numbers visits and sets from
+// 1 in that order. It keeps the slice.
+func NewPlan(all []Exposure) *Plan {
+	slices.SortStableFunc(all, func(a, b Exposure) int {
+		return cmp.Or(cmp.Compare(a.Start, b.Start), cmp.Compare(a.Telescope, b.Telescope))
+	})
+	sets := map[int64]int64{}
+	for i := range all {
+		all[i].Visit = int64(i + 1)
+		if s := all[i].Set; s != 0 {
+			if sets[s] == 0 {
+				sets[s] = int64(len(sets) + 1)
+			}
+			all[i].Set = sets[s]
+		}
+	}
+	return &Plan{Exposures: all}
 }

@@ -122,20 +122,7 @@ func (x *Search) Plan() *model.Plan {
 			out = append(out, ex)
 		}
 	}
-	slices.SortFunc(out, func(a, b model.Exposure) int {
-		return cmp.Or(cmp.Compare(a.Start, b.Start), cmp.Compare(a.Telescope, b.Telescope))
-	})
-	renumber := map[int64]int64{}
-	for i := range out {
-		out[i].Visit = int64(i + 1)
-		if s := out[i].Set; s != 0 {
-			if renumber[s] == 0 {
-				renumber[s] = int64(len(renumber) + 1)
-			}
-			out[i].Set = renumber[s]
-		}
-	}
-	return &model.Plan{Exposures: out}
+	return model.NewPlan(out)
 }
 
 // Use sums up how the open time is spent, s.
